@@ -1,0 +1,1 @@
+"""The first-party stages of Orchil: the chemistry. Knows no storage and no command line."""
