@@ -24,6 +24,8 @@ from .records import (
 )
 from .stage import (
     Availability,
+    Check,
+    CheckResult,
     Column,
     Context,
     Inputs,
@@ -40,6 +42,8 @@ __all__ = [
     "BadResult",
     "Band",
     "Brief",
+    "Check",
+    "CheckResult",
     "Column",
     "Conformers",
     "Context",

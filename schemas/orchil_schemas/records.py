@@ -76,6 +76,9 @@ class Medium(Record):
         default=None,
         description="name of the implicit-solvent parameter set used for the ground state; None is gas phase",
     )
+    solvation_stand_in: bool = Field(
+        default=False, description="the parameter set is that of a similar solvent, for want of one of its own"
+    )
     et30_kcal_mol: float | None = None
     hydrogen_bond_donor: bool = False
 
@@ -149,7 +152,7 @@ class Transitions(Record):
     electron_shift_angstrom: Annotated[FloatArray, Shape("states")]
     shift_angstrom: Annotated[FloatArray, Shape("states", 3)]
     charge_transfer_share: Annotated[FloatArray, Shape("states")] = Field(
-        description="share of the excitation whose electron and hole sit on different atoms, 0 to 1"
+        description="share of an electron that changes its atom, half the sum of |electron - hole|, 0 to 1"
     )
     overlap: Annotated[FloatArray, Shape("states")] = Field(description="overlap of hole and electron by atom, 0 to 1")
     dipole_change_debye: Annotated[FloatArray, Shape("states", 3)]

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import time
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any, Protocol, TypeVar, runtime_checkable
@@ -60,9 +60,29 @@ class Context:
         return self.deadline - time.monotonic()
 
 
+@dataclass(frozen=True)
+class CheckResult:
+    """What one check of `orchil check` found; ``detail`` is one line with the figures."""
+
+    ok: bool
+    detail: str = ""
+
+
+@dataclass(frozen=True)
+class Check:
+    """A short check that this machine works as it should (a published value is reproduced, a part answers)."""
+
+    name: str
+    run: Callable[[], CheckResult]
+
+
 @runtime_checkable
 class Stage(Protocol):
-    """One step of the chain for one candidate. Pure: same inputs, settings and seed, same records."""
+    """One step of the chain for one candidate. Pure: same inputs, settings and seed, same records.
+
+    Optional: a method ``check_brief(brief: Brief) -> list[str]`` that returns problems with the brief as whole
+    sentences (an unknown medium, say); the engine asks it before the first candidate and refuses the brief on any.
+    """
 
     name: str
     version: str

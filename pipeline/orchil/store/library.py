@@ -1,0 +1,57 @@
+"""Candidates from the library file, added once and never changed."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from itertools import islice
+from typing import Any
+
+import sqlalchemy as sa
+
+from . import bulk
+from .errors import StoreError
+from .models import candidate
+from .rows import CandidateRow
+
+_CHUNK = 5000
+_CONTENT = ("row_number", "name", "structure", "format", "medium", "charge", "extra")
+
+
+def add_candidates(connection: sa.Connection, rows: Sequence[CandidateRow]) -> None:
+    """Add the rows that are not there; :class:`StoreError` when one is there with another content."""
+    for chunk in _chunks(rows):
+        known = _known(connection, min(chunk), max(chunk))
+        changed = [number for number in chunk.keys() & known.keys() if chunk[number] != known[number]]
+        if changed:
+            raise _changed(known[min(changed)], chunk[min(changed)])
+        new = [content | {"status": "waiting"} for number, content in chunk.items() if number not in known]
+        bulk.insert(connection, candidate, new)
+
+
+def _chunks(rows: Sequence[CandidateRow]) -> Iterator[dict[int, dict[str, Any]]]:
+    left = iter(rows)
+    while taken := list(islice(left, _CHUNK)):
+        chunk: dict[int, dict[str, Any]] = {}
+        for row in taken:
+            content = _content(row)
+            if chunk.setdefault(row.row_number, content) != content:
+                raise _changed(chunk[row.row_number], content)
+        yield chunk
+
+
+def _content(row: CandidateRow) -> dict[str, Any]:
+    return {name: getattr(row, name) for name in _CONTENT} | {"extra": dict(row.extra)}
+
+
+def _known(connection: sa.Connection, first: int, last: int) -> dict[int, dict[str, Any]]:
+    columns = [candidate.c[name] for name in _CONTENT]
+    query = sa.select(*columns).where(candidate.c.row_number.between(first, last))
+    return {row.row_number: dict(row._mapping) for row in connection.execute(query)}
+
+
+def _changed(before: dict[str, Any], after: dict[str, Any]) -> StoreError:
+    parts = [f"{key} {before[key]!r} became {after[key]!r}" for key in _CONTENT if before[key] != after[key]]
+    return StoreError(
+        f"the library changed since this store was made: in row {before['row_number']} {', '.join(parts)}; "
+        "screen the new library into a new store"
+    )

@@ -1,0 +1,139 @@
+"""Distance geometry with a ladder of ever fewer assumptions.
+
+ETKDGv3 (Wang, Witek, Landrum, Riniker, J. Chem. Inf. Model. 60, 2044, 2020) first. Its knowledge terms
+hold fused aromatic rings flat, which crowded ones (helicenes) cannot be, and some drawn stereo cannot
+exist at all; each rung gives up one assumption and the record says which rung succeeded.
+"""
+
+from __future__ import annotations
+
+import time
+from collections.abc import Iterator
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from orchil_schemas import BadInput, Conformers, NotConverged
+from rdkit import Chem
+from rdkit.Chem import rdDistGeom
+
+from .force_field import rank_by_force_field
+from .stage import EmbedSettings
+
+SEEDS_PER_RUNG = 3
+SEED_STEP = 7919
+LARGEST_SEED = 2**31 - 1
+
+
+@dataclass(frozen=True)
+class Rung:
+    """One set of assumptions for the embedding."""
+
+    label: str
+    random_start: bool = False
+    knowledge: bool = True
+    chirality: bool = True
+    keep_stereo: bool = True
+
+    @property
+    def stereo_enforced(self) -> bool:
+        """Whether a structure from this rung has the stereo that was asked for."""
+        return self.chirality and self.keep_stereo
+
+    def parameters(self, seed: int, seconds: int) -> Any:
+        """RDKit embedding parameters; one thread, stereo failures counted."""
+        made: Any = rdDistGeom.ETKDGv3()
+        made.randomSeed = seed
+        made.numThreads = 1
+        made.timeout = seconds
+        made.trackFailures = True
+        made.useRandomCoords = self.random_start
+        made.useBasicKnowledge = self.knowledge
+        made.useExpTorsionAnglePrefs = self.knowledge
+        made.enforceChirality = self.chirality
+        return made
+
+
+LADDER = (
+    Rung("ETKDGv3"),
+    Rung("ETKDGv3, random start", random_start=True),
+    Rung("distance geometry without knowledge terms, random start", random_start=True, knowledge=False),
+    Rung("distance geometry, stereo not enforced", random_start=True, knowledge=False, chirality=False),
+    Rung("distance geometry, stereo removed", True, knowledge=False, chirality=False, keep_stereo=False),
+)
+
+
+def embed_structures(
+    smiles: str, settings: EmbedSettings, *, seed: int, deadline: float = np.inf
+) -> Conformers:
+    """Embed, clean with a force field and rank; the atom order is that of the SMILES, hydrogens last.
+
+    ``deadline`` is a ``time.monotonic`` value. Raises ``BadInput`` for a SMILES that does not parse and
+    ``NotConverged`` with code "no_3d" and the causes when no rung gives a structure.
+    """
+    molecule = read_with_hydrogens(smiles)
+    failures: list[str] = []
+    for rung in LADDER:
+        for rung_seed in _seeds(seed):
+            seconds = int(min(settings.rung_seconds, deadline - time.monotonic() - 1.0))
+            if seconds < 1:
+                raise NotConverged("no time left to embed; tried " + "; ".join(failures), code="no_3d")
+            embedded = _embed(molecule, rung, settings.candidates, rung_seed, seconds)
+            if isinstance(embedded, Chem.Mol):
+                return _conformers(embedded, rung, settings)
+            failures.append(f"{rung.label}: {embedded}")
+            if "timeout" in embedded:  # other seeds of this rung would time out as well
+                break
+    raise NotConverged("no three-dimensional structure found: " + "; ".join(failures), code="no_3d")
+
+
+def read_with_hydrogens(smiles: str) -> Chem.Mol:
+    """The molecule with explicit hydrogens; ``BadInput`` when the SMILES does not parse."""
+    molecule = Chem.MolFromSmiles(smiles)
+    if molecule is None:
+        raise BadInput(f"'{smiles}' is not a valid SMILES")
+    return Chem.AddHs(molecule)
+
+
+def _embed(molecule: Chem.Mol, rung: Rung, candidates: int, seed: int, seconds: int) -> Chem.Mol | str:
+    """A copy with conformers, or the reasons why there are none."""
+    trial = Chem.Mol(molecule)
+    if not rung.keep_stereo:
+        Chem.RemoveStereochemistry(trial)
+    parameters = rung.parameters(seed, seconds)
+    try:
+        made = rdDistGeom.EmbedMultipleConfs(trial, candidates, parameters)
+    except RuntimeError as error:  # an invariant of the minimiser in some ring systems, seed dependent
+        return str(error).strip().splitlines()[0]
+    return trial if len(made) > 0 else _count_failures(parameters)
+
+
+def _seeds(seed: int) -> Iterator[int]:
+    """Seeds between 1 and 2^31 - 1, the first one as given when it fits."""
+    for step in range(SEEDS_PER_RUNG):
+        yield (seed - 1 + step * SEED_STEP) % LARGEST_SEED + 1
+
+
+def _count_failures(parameters: Any) -> str:
+    """Failure causes with counts, most frequent first, for example "chirality 12, timeout 1"."""
+    counts = list(parameters.GetFailureCounts())
+    causes = sorted(rdDistGeom.EmbedFailureCauses.values.items())
+    named = [(counts[i], str(cause).lower().replace("_", " ")) for i, cause in causes if i < len(counts)]
+    return (
+        ", ".join(f"{name} {count}" for count, name in sorted(named, reverse=True) if count)
+        or "no reason given"
+    )
+
+
+def _conformers(molecule: Chem.Mol, rung: Rung, settings: EmbedSettings) -> Conformers:
+    """Force-field cleaning, then the record with the best structures first."""
+    force_field, order = rank_by_force_field(molecule, settings.force_field_steps)
+    positions = np.array([molecule.GetConformer(i).GetPositions() for i in order[: settings.conformers]])
+    return Conformers(
+        atomic_numbers=np.array([atom.GetAtomicNum() for atom in molecule.GetAtoms()]),
+        bonds=np.array([(b.GetBeginAtomIdx(), b.GetEndAtomIdx()) for b in molecule.GetBonds()]),
+        positions_angstrom=positions,
+        method=rung.label,
+        force_field=force_field,
+        stereo_enforced=rung.stereo_enforced,
+    )
