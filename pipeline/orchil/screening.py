@@ -68,10 +68,8 @@ def screen(
         candidates = _chosen(store, made.limit)
         _fail_unreadable(store, candidates, unreadable)
         runnable = [state for state in candidates if state.row_number not in unreadable]
-        with Supervisor(workers) as pool:
-            outcome = Runner(store, made.chain, made.brief, pool, progress).run(
-                runnable, retry_failed=retry_failed
-            )
+        runner = Runner(store, made.chain, made.brief, pool, progress)
+        outcome = runner.run(runnable, retry_failed=retry_failed)
         rank(store, made.chain, made.brief, screen_id)
     return outcome
 

@@ -8,7 +8,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 import pluggy
-from orchil_schemas import LibraryStage, Stage
+from orchil_schemas import Check, LibraryStage, Stage
 
 hookimpl = pluggy.HookimplMarker("orchil")
 
@@ -24,3 +24,11 @@ def orchil_stages() -> Sequence[Stage | LibraryStage]:
     from .score import Score
 
     return [Intake(), Embed(), Relax(), Excite(), Calibrate(), Score()]
+
+
+@hookimpl
+def orchil_checks() -> list[Check]:
+    """Published values that this machine must reproduce."""
+    from .checks import checks
+
+    return checks()

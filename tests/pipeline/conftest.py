@@ -10,7 +10,7 @@ from orchil.progress import PlainProgress
 from orchil.registry import EXTRA_PLUGINS, Registry
 from orchil.screening import plan, screen
 from orchil.store import Store
-from orchil.supervisor import Supervisor
+from orchil.supervisor import MEMORY_BYTES, Supervisor
 
 FAKE_PLUGIN = Path(__file__).with_name("fake_plugin.py")
 BRIEF = 'title = "Words"\nmedium = "water"\n[[want]]\nquantity = "strength"\nat_least = 5\n'
@@ -34,9 +34,7 @@ def night(fakes, tmp_path, monkeypatch):
     monkeypatch.setenv("FAKE_RUNS", str(marks))
     store_path = tmp_path / "night.db"
 
-    def run(
-        *words: str, brief: str = BRIEF, workers: int = 2, retry_failed: bool = False, header: str = "smiles"
-    ):
+    def run(*words, brief=BRIEF, workers=2, retry_failed=False, header="smiles", memory=MEMORY_BYTES):
         (tmp_path / "words.csv").write_text("\n".join([header, *words]) + "\n")
         (tmp_path / "brief.toml").write_text(brief)
         made = plan(tmp_path / "words.csv", tmp_path / "brief.toml", fakes)

@@ -1,13 +1,14 @@
-"""Physical features of the reported state that the calibration uses; no structure patterns, no fingerprints."""
+"""Physical features of the reported state that the calibration uses; no structure patterns, no
+fingerprints.
+"""
 
 from __future__ import annotations
 
 import numpy as np
-
 from orchil_schemas import FloatArray, Identity, Medium, Orbitals, Transitions
 
-from ..excite.bright import first_bright, strongest_state
-from ..medium import orientation_polarisability
+from orchil_stages.excite.bright import first_bright, strongest_state
+from orchil_stages.medium import orientation_polarisability
 
 NAMES = (
     "energy",
@@ -35,7 +36,9 @@ NAMES = (
 """Names of the features in their order."""
 
 
-def band_features(identity: Identity, medium: Medium, orbitals: Orbitals, transitions: Transitions) -> FloatArray:
+def band_features(
+    identity: Identity, medium: Medium, orbitals: Orbitals, transitions: Transitions
+) -> FloatArray:
     """Feature vector (len(NAMES),) of the first bright state."""
     energies, strengths = transitions.energy_ev, transitions.oscillator_strength
     state = first_bright(energies, strengths)

@@ -1,7 +1,8 @@
 """Linear models with intervals: ridge regression, and a width that depends on the features.
 
-The interval is conformal (Vovk, Gammerman, Shafer, Algorithmic Learning in a Random World, 2005): residuals of dyes on
-scaffolds the model has never seen, divided by the expected size of the error at their features, give the quantile.
+The interval is conformal (Vovk, Gammerman, Shafer, Algorithmic Learning in a Random World, 2005): residuals
+of dyes on scaffolds the model has never seen, divided by the expected size of the error at their features,
+give the quantile.
 """
 
 from __future__ import annotations
@@ -13,7 +14,6 @@ from importlib.resources import files
 from typing import Any
 
 import numpy as np
-
 from orchil_schemas import FloatArray
 
 
@@ -21,8 +21,8 @@ from orchil_schemas import FloatArray
 class LinearModel:
     """value = intercept + x . slope; expected size of the error = exp(size_intercept + x . size_slope).
 
-    x are the features less ``centre`` over ``scale``; ``low`` and ``high`` are quantiles of (measured - value) / size
-    by coverage.
+    x are the features less ``centre`` over ``scale``; ``low`` and ``high`` are quantiles of (measured -
+    value) / size by coverage.
     """
 
     centre: FloatArray
@@ -82,13 +82,14 @@ def load_calibration(text: str) -> Calibration:
     given = json.loads(text)
     models = {name: _model(given[name]) for name in ("position", "absorptivity", "width", "stokes")}
     inner, outer = given["distance_edges"]
-    return Calibration(**models, feature_inverse=np.array(given["feature_inverse"]), distance_edges=(inner, outer))
+    return Calibration(
+        **models, feature_inverse=np.array(given["feature_inverse"]), distance_edges=(inner, outer)
+    )
 
 
 def _model(given: dict[str, Any]) -> LinearModel:
-    arrays = {name: np.array(given[name]) for name in ("centre", "scale", "slope", "size_slope")}
-    rest = {name: given[name] for name in ("intercept", "size_intercept", "low", "high")}
-    return LinearModel(**arrays, **rest)
+    arrays: dict[str, Any] = {n: np.array(given[n]) for n in ("centre", "scale", "slope", "size_slope")}
+    return LinearModel(**{**given, **arrays})
 
 
 @cache

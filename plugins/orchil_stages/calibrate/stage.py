@@ -1,13 +1,12 @@
-"""The calibrate stage: which state is the absorption maximum, where it is measured, how strongly, how surely."""
+"""The calibrate stage: which state is the absorption maximum, where it is measured, how strongly, how
+surely.
+"""
 
 from __future__ import annotations
 
 from collections.abc import Iterable
-from typing import ClassVar, Literal
 
 import numpy as np
-from pydantic import Field
-
 from orchil_schemas import (
     HC_EV_NM,
     Availability,
@@ -22,14 +21,26 @@ from orchil_schemas import (
     Record,
     Transitions,
 )
+from pydantic import Field, field_validator
 
-from ..installed import availability
+from orchil_stages.installed import availability
+
+COVERAGES = (0.5, 0.8, 0.9, 0.95)
+"""Probabilities for which intervals are trained."""
 
 
 class CalibrateSettings(Frozen):
     """How wide the reported intervals are."""
 
-    coverage: Literal[0.5, 0.8, 0.9, 0.95] = Field(default=0.9, description="probability of the central intervals")
+    coverage: float = Field(default=0.9, description="probability of the central intervals")
+
+    @field_validator("coverage")
+    @classmethod
+    def _trained(cls, coverage: float) -> float:
+        if coverage not in COVERAGES:
+            known = ", ".join(f"{c:g}" for c in COVERAGES)
+            raise ValueError(f"coverage = {coverage:g} is not calibrated; choose one of {known}")
+        return coverage
 
 
 class Calibrate:
@@ -39,7 +50,7 @@ class Calibrate:
     version = "1"
     needs: tuple[type[Record], ...] = (Identity, Medium, Orbitals, Transitions)
     makes: tuple[type[Record], ...] = (Band,)
-    Settings: ClassVar[type[Frozen]] = CalibrateSettings
+    Settings: type[Frozen] = CalibrateSettings
     time_limit_seconds = 30.0
 
     def found(self) -> Availability:
@@ -62,7 +73,8 @@ _SHORTEST_EV, _LONGEST_EV = 7.0, 0.3
 def _band(
     features: FloatArray, identity: Identity, medium: Medium, transitions: Transitions, coverage: float
 ) -> Band:
-    from ..excite.bright import first_bright, strongest_state
+    from orchil_stages.excite.bright import first_bright, strongest_state
+
     from .linear import trained_calibration
 
     models = trained_calibration()

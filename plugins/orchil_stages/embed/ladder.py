@@ -27,9 +27,13 @@ LARGEST_SEED = 2**31 - 1
 
 @dataclass(frozen=True)
 class Rung:
-    """One set of assumptions for the embedding."""
+    """One set of assumptions for the embedding; ``trials`` bounds the work by count (0: ten per atom).
+
+    A count gives the same answer on a busy machine, which the time limit does not.
+    """
 
     label: str
+    trials: int = 0
     random_start: bool = False
     knowledge: bool = True
     chirality: bool = True
@@ -47,6 +51,7 @@ class Rung:
         made.numThreads = 1
         made.timeout = seconds
         made.trackFailures = True
+        made.maxIterations = self.trials
         made.useRandomCoords = self.random_start
         made.useBasicKnowledge = self.knowledge
         made.useExpTorsionAnglePrefs = self.knowledge
@@ -55,11 +60,11 @@ class Rung:
 
 
 LADDER = (
-    Rung("ETKDGv3"),
-    Rung("ETKDGv3, random start", random_start=True),
-    Rung("distance geometry without knowledge terms, random start", random_start=True, knowledge=False),
+    Rung("ETKDGv3", 60),
+    Rung("ETKDGv3, random start", 120, random_start=True),
+    Rung("distance geometry without knowledge terms", random_start=True, knowledge=False),
     Rung("distance geometry, stereo not enforced", random_start=True, knowledge=False, chirality=False),
-    Rung("distance geometry, stereo removed", True, knowledge=False, chirality=False, keep_stereo=False),
+    Rung("distance geometry, stereo removed", 0, True, knowledge=False, chirality=False, keep_stereo=False),
 )
 
 
@@ -82,7 +87,7 @@ def embed_structures(
             if isinstance(embedded, Chem.Mol):
                 return _conformers(embedded, rung, settings)
             failures.append(f"{rung.label}: {embedded}")
-            if "timeout" in embedded:  # other seeds of this rung would time out as well
+            if embedded[-1].isdigit():  # counted failures: only a crashed minimiser deserves another seed
                 break
     raise NotConverged("no three-dimensional structure found: " + "; ".join(failures), code="no_3d")
 
@@ -102,10 +107,10 @@ def _embed(molecule: Chem.Mol, rung: Rung, candidates: int, seed: int, seconds: 
         Chem.RemoveStereochemistry(trial)
     parameters = rung.parameters(seed, seconds)
     try:
-        made = rdDistGeom.EmbedMultipleConfs(trial, candidates, parameters)
+        rdDistGeom.EmbedMultipleConfs(trial, candidates, parameters)
     except RuntimeError as error:  # an invariant of the minimiser in some ring systems, seed dependent
         return str(error).strip().splitlines()[0]
-    return trial if len(made) > 0 else _count_failures(parameters)
+    return trial if trial.GetNumConformers() else _count_failures(parameters)
 
 
 def _seeds(seed: int) -> Iterator[int]:

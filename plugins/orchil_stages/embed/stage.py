@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 from importlib.metadata import PackageNotFoundError, version
-from typing import ClassVar
 
 from orchil_schemas import Availability, Conformers, Context, Frozen, Identity, Inputs, Record
 from pydantic import Field, model_validator
@@ -37,7 +36,7 @@ class Embed:
     version = "1"
     needs: tuple[type[Record], ...] = (Identity,)
     makes: tuple[type[Record], ...] = (Conformers,)
-    Settings: ClassVar[type[Frozen]] = EmbedSettings
+    Settings: type[Frozen] = EmbedSettings
     time_limit_seconds = 120.0
 
     def found(self) -> Availability:

@@ -5,7 +5,6 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-
 from orchil_schemas import FloatArray, IntArray
 
 from .dipoles import hole_and_particle
@@ -126,4 +125,3 @@ def leading_pairs(states: States) -> Leading:
     place = weights.reshape(count, -1).argmax(axis=1)
     start, end = np.divmod(place, virtual)
     return Leading(occupied - 1 - start, end, weights.reshape(count, -1).max(axis=1))
-

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import numpy as np
-
 from orchil_schemas import FloatArray
 
 DARK_SHARE = 0.05
@@ -11,7 +10,9 @@ DARK_SHARE = 0.05
 DARK_STRENGTH = 0.01
 """... or below this value."""
 REACH_EV = 2.0
-"""States more than this above the first one are not compared with it: the far ultraviolet is always strong."""
+"""States more than this above the first one are not compared with it: the far ultraviolet is always
+strong.
+"""
 
 
 def first_bright(energies: FloatArray, strengths: FloatArray) -> int:

@@ -1,9 +1,10 @@
-"""Change of the dipole moment and movement of the electron on excitation, from hole and particle densities."""
+"""Change of the dipole moment and movement of the electron on excitation, from hole and particle
+densities.
+"""
 
 from __future__ import annotations
 
 import numpy as np
-
 from orchil_schemas import FloatArray
 
 from .window import Window

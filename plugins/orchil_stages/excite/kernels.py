@@ -5,10 +5,10 @@ from __future__ import annotations
 from functools import cache
 
 import numpy as np
-
 from orchil_schemas import FloatArray, IntArray
 
-from ..ground_state import HARTREE_EV
+from orchil_stages.ground_state import HARTREE_EV
+
 from .parameters import ELEMENTS, Parameters
 from .window import hardness
 

@@ -1,7 +1,7 @@
 """First-order shifts of the orbital levels, resolved by shell, coordination and charge.
 
-The shift of a basis function is a smooth function of the geometry (fractional coordination number) and of the density
-(atomic charge), never of bond symbols, so that the energies are smooth along a distortion.
+The shift of a basis function is a smooth function of the geometry (fractional coordination number) and of the
+density (atomic charge), never of bond symbols, so that the energies are smooth along a distortion.
 """
 
 from __future__ import annotations
@@ -10,12 +10,11 @@ from dataclasses import dataclass
 from functools import cache
 
 import numpy as np
-
 from numpy.typing import NDArray
-
 from orchil_schemas import FloatArray, IntArray
 
-from ..ground_state import BOHR_ANGSTROM
+from orchil_stages.ground_state import BOHR_ANGSTROM
+
 from .parameters import CHARGED, Parameters, level_kinds
 from .window import HOPPING_CLASSES, Window
 
@@ -24,22 +23,26 @@ _WIDTH = 0.3
 
 # Covalent radii in angstrom: Pyykko, Atsumi, Chem. Eur. J. 15, 186 (2009), metals apart
 _RADII = {
-    1: 0.32, 3: 1.33, 5: 0.85, 6: 0.75, 7: 0.71, 8: 0.63, 9: 0.64, 11: 1.55, 12: 1.39, 13: 1.26, 14: 1.16, 15: 1.11,
-    16: 1.03, 17: 0.99, 19: 1.96, 32: 1.21, 33: 1.21, 34: 1.16, 35: 1.14, 50: 1.40, 52: 1.36, 53: 1.33,
+    1: 0.32, 3: 1.33, 5: 0.85, 6: 0.75, 7: 0.71, 8: 0.63, 9: 0.64, 11: 1.55, 12: 1.39, 13: 1.26,
+    14: 1.16, 15: 1.11, 16: 1.03, 17: 0.99, 19: 1.96, 32: 1.21, 33: 1.21, 34: 1.16, 35: 1.14,
+    50: 1.40, 52: 1.36, 53: 1.33,
 }  # fmt: skip
 
 
 def coordination_numbers(numbers: IntArray, positions: FloatArray) -> FloatArray:
     """Fractional coordination number of each atom (positions in bohr).
 
-    Counting function of the D3 dispersion model: Grimme, Antony, Ehrlich, Krieg, J. Chem. Phys. 132, 154104 (2010).
+    Counting function of the D3 dispersion model: Grimme, Antony, Ehrlich, Krieg, J. Chem. Phys. 132, 154104
+    (2010).
     """
     counts: FloatArray = _bond_counts(numbers, positions).sum(axis=1)
     return counts
 
 
 def bonded(numbers: IntArray, positions: FloatArray) -> NDArray[np.bool_]:
-    """Which atoms are bonded by distance (positions in bohr): counted by more than a half, shape (atoms, atoms)."""
+    """Which atoms are bonded by distance (positions in bohr): counted by more than a half, shape (atoms,
+    atoms).
+    """
     return _bond_counts(numbers, positions) > 0.5
 
 
@@ -73,11 +76,11 @@ def level_features(window: Window) -> LevelFeatures:
     atom, momentum = window.where.atom, window.where.momentum
     number = window.numbers[atom]
     kinds = np.zeros((len(atom), len(level_kinds())))
-    for (element, l), columns in _kinds_by_shell().items():
-        rows = np.flatnonzero((number == element) & (momentum == l))
+    for (element, shell), columns in _kinds_by_shell().items():
+        rows = np.flatnonzero((number == element) & (momentum == shell))
         if len(rows):
             centres = [level_kinds()[c].coordination or 0.0 for c in columns]
-            kinds[np.ix_(rows, columns)] = _soft_choice(coordination[atom[rows]], np.array(centres))
+            kinds[rows[:, None], columns] = _soft_choice(coordination[atom[rows]], np.array(centres))
     charges = (number[:, None] == np.array(CHARGED)) * window.charges[atom][:, None]
     return LevelFeatures(kinds, charges)
 

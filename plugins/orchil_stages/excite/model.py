@@ -5,11 +5,11 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-
 from orchil_schemas import BadResult, FloatArray, Geometry, Medium
 
-from ..ground_state import BOHR_ANGSTROM, Wavefunction, check_result, open_ground_state
-from ..ground_state.basis import integrals
+from orchil_stages.ground_state import BOHR_ANGSTROM, Wavefunction, check_result, open_ground_state
+from orchil_stages.ground_state.basis import integrals
+
 from .dipoles import dipole_change
 from .parameters import Parameters
 from .response import Prepared, States, hamiltonian, solve

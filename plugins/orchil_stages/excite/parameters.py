@@ -1,8 +1,9 @@
 """The trained numbers of the response Hamiltonian, by name, as one flat vector.
 
-Names: ``gap_scale``, ``constant`` (eV); ``occ:7p3``/``virt:7p3`` level shifts (eV) of the p shell of nitrogen with
-coordination number 3; ``occ_charge:7``/``virt_charge:7`` their response to the atomic charge (eV/e); ``hop:6-7`` relative
-change of p-p couplings; ``coulomb_*`` and ``exchange_*`` the damped kernels; ``solvent_*`` the medium.
+Names: ``gap_scale``, ``constant`` (eV); ``occ:7p3``/``virt:7p3`` level shifts (eV) of the p shell of nitrogen
+with coordination number 3; ``occ_charge:7``/``virt_charge:7`` their response to the atomic charge (eV/e);
+``hop:6-7`` relative change of p-p couplings; ``coulomb_*`` and ``exchange_*`` the damped kernels;
+``solvent_*`` the medium.
 """
 
 from __future__ import annotations
@@ -14,7 +15,6 @@ from functools import cache
 from importlib.resources import files
 
 import numpy as np
-
 from orchil_schemas import FloatArray
 
 from .window import HOPPING_CLASSES
@@ -71,8 +71,8 @@ def start_values() -> Mapping[str, float]:
         values |= {f"{side}:{kind.name}": 0.0 for kind in level_kinds()}
         values |= {f"{side}_charge:{number}": 0.0 for number in CHARGED}
     values |= {f"hop:{one}-{other}": 0.0 for one, other in HOPPING_CLASSES}
-    # kernels start as in the simplified Tamm-Dancoff approach (Grimme, J. Chem. Phys. 138, 244104, 2013), with the
-    # attraction halved again because the levels of GFN2-xTB lie as close as those of a functional without exchange
+    # kernels start as in the simplified Tamm-Dancoff approach (Grimme, J. Chem. Phys. 138, 244104, 2013),
+    # with the attraction halved again: GFN2-xTB levels lie as close as those of a functional without exchange
     values |= {"coulomb_near": 0.25, "coulomb_far": 0.25, "coulomb_length": 4.0, "coulomb_exponent": 2.0}
     values |= {"exchange_strength": 1.0, "exchange_exponent": 2.0}
     for kernel in ("coulomb", "exchange"):
@@ -113,7 +113,9 @@ def start_parameters() -> Parameters:
 
 
 def load_parameters(text: str) -> Parameters:
-    """Parameters from the JSON of a parameter file; names it lacks keep their start value (ValueError: unknown)."""
+    """Parameters from the JSON of a parameter file; names it lacks keep their start value (ValueError:
+    unknown).
+    """
     values = dict(start_values())
     given = json.loads(text)["parameters"]
     unknown = set(given) - set(values)

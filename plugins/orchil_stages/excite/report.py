@@ -3,10 +3,10 @@
 from __future__ import annotations
 
 import numpy as np
-
 from orchil_schemas import Orbitals, Transitions
 
-from ..ground_state import BOHR_ANGSTROM
+from orchil_stages.ground_state import BOHR_ANGSTROM
+
 from .analysis import angle_to_axis, fixed_sign, leading_pairs, long_axis, pi_share, populations
 from .dipoles import centroid_shift
 from .masses import atomic_masses

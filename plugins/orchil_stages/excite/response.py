@@ -1,7 +1,8 @@
 """The response Hamiltonian: configuration interaction of single excitations in the window, singlets.
 
-A(ia,jb) = d_ij F_ab - d_ab F_ij + d_ij d_ab c + 2 K(ia|jb) - J(ij|ab) in the spirit of the simplified Tamm-Dancoff
-approach (Grimme, J. Chem. Phys. 138, 244104, 2013): K and J act between Loewdin transition charges.
+A(ia,jb) = d_ij F_ab - d_ab F_ij + d_ij d_ab c + 2 K(ia|jb) - J(ij|ab) in the spirit of the simplified
+Tamm-Dancoff approach (Grimme, J. Chem. Phys. 138, 244104, 2013): K and J act between Loewdin transition
+charges.
 """
 
 from __future__ import annotations
@@ -10,7 +11,6 @@ from dataclasses import dataclass
 
 import numpy as np
 import scipy.linalg
-
 from orchil_schemas import FloatArray, NotConverged
 
 from .kernels import coulomb_kernel, exchange_kernel
@@ -39,7 +39,7 @@ class States:
     @property
     def strengths(self) -> FloatArray:
         """Oscillator strengths f = 2/3 E |mu|^2 in atomic units (length gauge)."""
-        from ..ground_state import HARTREE_EV
+        from orchil_stages.ground_state import HARTREE_EV
 
         f: FloatArray = 2.0 / 3.0 * self.energies / HARTREE_EV * (self.dipoles**2).sum(axis=1)
         return f
@@ -86,7 +86,9 @@ def hamiltonian(prepared: Prepared, parameters: Parameters) -> FloatArray:
 def assemble(
     occupied: FloatArray, virtual: FloatArray, blocks: ChargeBlocks, coulomb: FloatArray, exchange: FloatArray
 ) -> FloatArray:
-    """A from one-electron matrices, charges and atom-atom kernels (``exchange`` already times its spin factor)."""
+    """A from one-electron matrices, charges and atom-atom kernels (``exchange`` already times its spin
+    factor).
+    """
     o, v, atoms = len(occupied), len(virtual), len(coulomb)
     screened = coulomb @ blocks.virtual.reshape(atoms, v * v)
     attraction = blocks.occupied.reshape(atoms, o * o).T @ screened
@@ -105,7 +107,9 @@ def solve(matrix: FloatArray, window: Window, states: int) -> States:
     """Lowest states of A; NotConverged when the eigenvalue search fails."""
     count = min(states, len(matrix))
     try:
-        energies, vectors = scipy.linalg.eigh(matrix, subset_by_index=(0, count - 1), driver="evr", check_finite=False)
+        energies, vectors = scipy.linalg.eigh(
+            matrix, subset_by_index=(0, count - 1), driver="evr", check_finite=False
+        )
     except np.linalg.LinAlgError as error:
         raise NotConverged(f"eigenvalues of the response Hamiltonian: {error}") from None
     amplitudes = np.ascontiguousarray(vectors.T).reshape(count, window.occupied, window.virtual)

@@ -1,18 +1,18 @@
 """Medium terms added to each state to first order: what the implicit solvent of the ground state leaves out.
 
-The reaction field of the ground state is already in the orbital energies. The three terms here are scaled by trained
-numbers: linear response of the fast polarisation to the transition dipole; the same field acting on the change of
-dipole (Lippert, Z. Naturforsch. A 10, 541, 1955; Mataga, Kaifu, Koizumi, Bull. Chem. Soc. Jpn. 29, 465, 1956); and the
-general red shift by the polarisability of the medium (Bayliss, J. Chem. Phys. 18, 292, 1950).
+The reaction field of the ground state is already in the orbital energies. The three terms here are scaled by
+trained numbers: linear response of the fast polarisation to the transition dipole; the same field acting on
+the change of dipole (Lippert, Z. Naturforsch. A 10, 541, 1955; Mataga, Kaifu, Koizumi, Bull. Chem. Soc. Jpn.
+29, 465, 1956); and the general red shift by the polarisability of the medium (Bayliss, J. Chem. Phys. 18,
+292, 1950).
 """
 
 from __future__ import annotations
 
 import numpy as np
-
 from orchil_schemas import FloatArray, IntArray, Medium
 
-from ..ground_state import HARTREE_EV
+from orchil_stages.ground_state import HARTREE_EV
 
 SOLVENT_NAMES = ("solvent_transition", "solvent_dipole", "solvent_polarisability")
 
@@ -25,8 +25,8 @@ def medium_features(
 ) -> FloatArray:
     """Terms in eV that the trained solvent numbers multiply, shape (states, 3).
 
-    transition (n, 3), ground (3,) and change (n, 3) are the transition dipoles, the ground-state dipole and the change
-    of dipole in e bohr.
+    transition (n, 3), ground (3,) and change (n, 3) are the transition dipoles, the ground-state dipole and
+    the change of dipole in e bohr.
     """
     cubed = 3.0 / (4.0 * np.pi) * _VOLUME_PER_ATOM * max(int(np.count_nonzero(numbers > 1)), 1)
     fast, total = _onsager(medium.refractive_index**2), _onsager(medium.dielectric_constant)

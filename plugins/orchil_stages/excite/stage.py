@@ -1,11 +1,10 @@
-"""The excite stage: orbitals of GFN2-xTB, response Hamiltonian, singlet states with their transition dipoles."""
+"""The excite stage: orbitals of GFN2-xTB, response Hamiltonian, singlet states with their transition
+dipoles.
+"""
 
 from __future__ import annotations
 
 from collections.abc import Iterable
-from typing import ClassVar
-
-from pydantic import Field
 
 from orchil_schemas import (
     Availability,
@@ -19,8 +18,9 @@ from orchil_schemas import (
     Record,
     Transitions,
 )
+from pydantic import Field
 
-from ..installed import availability
+from orchil_stages.installed import availability
 
 
 class ExciteSettings(Frozen):
@@ -38,12 +38,12 @@ class Excite:
     version = "1"
     needs: tuple[type[Record], ...] = (Geometry, Medium)
     makes: tuple[type[Record], ...] = (Orbitals, Transitions)
-    Settings: ClassVar[type[Frozen]] = ExciteSettings
+    Settings: type[Frozen] = ExciteSettings
     time_limit_seconds = 120.0
 
     def found(self) -> Availability:
         """Are a ground-state engine and libcint (through PySCF) here?"""
-        from ..ground_state import engine_names
+        from orchil_stages.ground_state import engine_names
 
         engines = engine_names()
         if not engines:
@@ -63,7 +63,8 @@ class Excite:
         states, _ = solve_states(prepared, trained_parameters(), medium, opened.wave.dipole, settings.states)
         if states.energies[0] <= _LOWEST_EV:
             raise BadResult(
-                f"the first excited state lies at {states.energies[0]:.2f} eV: no sound closed-shell ground state"
+                f"the first excited state lies at {states.energies[0]:.2f} eV: "
+                "no sound closed-shell ground state"
             )
         return orbitals_record(opened), transitions_record(states, opened.window)
 

@@ -1,15 +1,16 @@
-"""The active window: orbitals around the gap in the Loewdin basis, with all that the response Hamiltonian needs."""
+"""The active window: orbitals around the gap in the Loewdin basis, with all that the response Hamiltonian
+needs.
+"""
 
 from __future__ import annotations
 
 from dataclasses import dataclass
 
 import numpy as np
-
 from orchil_schemas import BadResult, FloatArray, IntArray
 
-from ..ground_state import HARTREE_EV, Wavefunction
-from ..ground_state.basis import BasisMap, Integrals, basis_map, shells
+from orchil_stages.ground_state import HARTREE_EV, Wavefunction
+from orchil_stages.ground_state.basis import BasisMap, Integrals, basis_map, shells
 
 OVERLAP_TOLERANCE = 1e-5
 DIPOLE_TOLERANCE = 1e-3
@@ -34,9 +35,9 @@ HOPPING_CLASSES: tuple[tuple[int, int], ...] = (
 class Window:
     """``occupied`` + ``virtual`` orbitals (m in all) around the gap of one species at one geometry.
 
-    energies: (m,) eV; loewdin: (functions, m) symmetrically orthogonalised coefficients; hopping: (classes, m, m)
-    one-electron matrix elements of the p-p couplings between atoms, by element pair, eV; dipole: (3, m, m) position
-    integrals, bohr; numbers, positions (bohr) and charges (e) by atom; where: the basis map.
+    energies: (m,) eV; loewdin: (functions, m) symmetrically orthogonalised coefficients; hopping: (classes,
+    m, m) one-electron matrix elements of the p-p couplings between atoms, by element pair, eV; dipole: (3, m,
+    m) position integrals, bohr; numbers, positions (bohr) and charges (e) by atom; where: the basis map.
     """
 
     occupied: int
@@ -63,21 +64,31 @@ class Assertions:
     dipole_error: float
 
 
-def check_integrals(numbers: IntArray, positions: FloatArray, wave: Wavefunction, ints: Integrals) -> Assertions:
-    """Assert that the rebuilt basis is the engine's: orthonormal orbitals and the same dipole (BadResult if not)."""
+def check_integrals(
+    numbers: IntArray, positions: FloatArray, wave: Wavefunction, ints: Integrals
+) -> Assertions:
+    """Assert that the rebuilt basis is the engine's: orthonormal orbitals and the same dipole (BadResult if
+    not).
+    """
     c = wave.coefficients
     if c.shape[0] != ints.overlap.shape[0]:
-        raise BadResult(f"{c.shape[0]} orbitals from the engine, {ints.overlap.shape[0]} basis functions rebuilt")
+        raise BadResult(
+            f"{c.shape[0]} orbitals from the engine, {ints.overlap.shape[0]} basis functions rebuilt"
+        )
     overlap_error = float(np.abs(c.T @ ints.overlap @ c - np.eye(c.shape[1])).max())
     dipole_error = float(np.abs(molecular_dipole(numbers, positions, wave, ints) - wave.dipole).max())
     if overlap_error > OVERLAP_TOLERANCE:
-        raise BadResult(f"orbitals are not orthonormal in the rebuilt basis (largest error {overlap_error:.1e})")
+        raise BadResult(
+            f"orbitals are not orthonormal in the rebuilt basis (largest error {overlap_error:.1e})"
+        )
     if dipole_error > DIPOLE_TOLERANCE:
         raise BadResult(f"the rebuilt dipole differs by {dipole_error:.1e} e bohr from that of GFN2-xTB")
     return Assertions(overlap_error, dipole_error)
 
 
-def molecular_dipole(numbers: IntArray, positions: FloatArray, wave: Wavefunction, ints: Integrals) -> FloatArray:
+def molecular_dipole(
+    numbers: IntArray, positions: FloatArray, wave: Wavefunction, ints: Integrals
+) -> FloatArray:
     """Dipole (e bohr) from the density in the rebuilt basis and the valence charges of the nuclei."""
     density = (wave.coefficients * wave.occupations) @ wave.coefficients.T
     electronic = -np.einsum("xij,ij->x", ints.position, density)
@@ -117,7 +128,7 @@ def open_window(
     """Cut the window out of a converged wavefunction; smaller where the molecule has fewer orbitals."""
     filled = int(np.count_nonzero(wave.occupations > 1.0))
     low, high = max(0, filled - occupied), min(len(wave.energies), filled + virtual)
-    if filled == low or filled == high:
+    if filled in (low, high):
         raise BadResult("no occupied or no virtual orbitals: nothing can be excited")
     half = _half_overlap(ints.overlap)
     orthogonal = half @ wave.coefficients
@@ -145,13 +156,17 @@ def _half_overlap(overlap: FloatArray) -> FloatArray:
 
 
 def _hopping(numbers: IntArray, where: BasisMap, fock: FloatArray, loewdin: FloatArray) -> FloatArray:
-    """Window matrix elements of the p-p blocks of the Fock matrix between different atoms, by element pair."""
+    """Window matrix elements of the p-p blocks of the Fock matrix between different atoms, by element
+    pair.
+    """
     p_type = where.momentum == 1
     element = np.where(p_type, numbers[where.atom], 0)
     blocks = []
     for one, other in HOPPING_CLASSES:
         rows, columns = np.flatnonzero(element == one), np.flatnonzero(element == other)
-        coupling = np.where(where.atom[rows][:, None] == where.atom[columns], 0.0, fock[np.ix_(rows, columns)])
+        coupling = np.where(
+            where.atom[rows][:, None] == where.atom[columns], 0.0, fock[np.ix_(rows, columns)]
+        )
         half = loewdin[rows].T @ coupling @ loewdin[columns]
         blocks.append(half if one == other else half + half.T)
     return np.array(blocks)

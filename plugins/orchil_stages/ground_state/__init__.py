@@ -1,7 +1,7 @@
 """One small door to GFN2-xTB (Bannwarth, Ehlert, Grimme, J. Chem. Theory Comput. 15, 1652, 2019).
 
-Behind it is ``xtb`` on CPython before 3.12 and ``tblite`` from there on; both use GBSA solvation so that the two
-give the same numbers to about 1e-6 hartree.
+Behind it is ``xtb`` on CPython before 3.12 and ``tblite`` from there on; both use GBSA solvation so that the
+two give the same numbers to about 1e-6 hartree.
 """
 
 from __future__ import annotations
@@ -9,7 +9,6 @@ from __future__ import annotations
 import sys
 
 import numpy as np
-
 from orchil_schemas import BadResult, FloatArray, IntArray, OutOfScope
 
 from .types import BOHR_ANGSTROM, HARTREE_EV, KELVIN_HARTREE, Evaluation, GroundState, Opener, Wavefunction
@@ -88,7 +87,9 @@ def check_result(evaluation: Evaluation, charges: FloatArray, charge: int) -> No
     if not (np.isfinite(evaluation.energy) and np.isfinite(evaluation.gradient).all()):
         raise BadResult("GFN2-xTB returned an energy or gradient that is not a number")
     if abs(float(charges.sum()) - charge) > 1e-3 or float(np.abs(charges).max()) > 3.5:
-        raise BadResult(f"GFN2-xTB returned impossible atomic charges (sum {charges.sum():.3f}, expected {charge})")
+        raise BadResult(
+            f"GFN2-xTB returned impossible atomic charges (sum {charges.sum():.3f}, expected {charge})"
+        )
 
 
 def _opener(engine: str | None) -> Opener:

@@ -1,7 +1,7 @@
 """The valence basis of GFN2-xTB as a PySCF molecule, so that libcint gives its integrals.
 
-Slater exponents: Bannwarth, Ehlert, Grimme, J. Chem. Theory Comput. 15, 1652 (2019); Gaussian expansions of Slater
-functions: Stewart, J. Chem. Phys. 52, 431 (1970). Both tables lie in this folder as CSV.
+Slater exponents: Bannwarth, Ehlert, Grimme, J. Chem. Theory Comput. 15, 1652 (2019); Gaussian expansions of
+Slater functions: Stewart, J. Chem. Phys. 52, 431 (1970). Both tables lie in this folder as CSV.
 """
 
 from __future__ import annotations
@@ -13,7 +13,6 @@ from importlib.resources import files
 from typing import Any
 
 import numpy as np
-
 from orchil_schemas import FloatArray, IntArray, OutOfScope
 
 ANGULAR = {"s": 0, "p": 1, "d": 2}
@@ -21,7 +20,9 @@ ANGULAR = {"s": 0, "p": 1, "d": 2}
 
 @dataclass(frozen=True)
 class Shell:
-    """One valence shell: "3d", Slater exponent (1/bohr), Gaussians in its expansion, atom hardness (hartree)."""
+    """One valence shell: "3d", Slater exponent (1/bohr), Gaussians in its expansion, atom hardness
+    (hartree).
+    """
 
     label: str
     exponent: float
@@ -36,7 +37,9 @@ class Shell:
 
 @cache
 def shells(number: int) -> tuple[Shell, ...]:
-    """Valence shells of an element by atomic number, in the order s, p, d; OutOfScope when it is not in the table."""
+    """Valence shells of an element by atomic number, in the order s, p, d; OutOfScope when it is not in the
+    table.
+    """
     table = _shell_table()
     if number not in table:
         raise OutOfScope(f"no basis for the element with atomic number {number}")
@@ -58,7 +61,9 @@ def basis_map(numbers: IntArray) -> BasisMap:
     counts = np.array([2 * momentum + 1 for _, momentum in rows])
     table = np.array(rows)
     return BasisMap(
-        np.repeat(table[:, 0], counts), np.repeat(table[:, 1], counts), np.repeat(np.arange(len(rows)), counts)
+        np.repeat(table[:, 0], counts),
+        np.repeat(table[:, 1], counts),
+        np.repeat(np.arange(len(rows)), counts),
     )
 
 
@@ -80,7 +85,9 @@ def _molecule(numbers: IntArray, positions_bohr: FloatArray) -> Any:
     from pyscf import gto
 
     molecule = gto.Mole()
-    molecule.atom = [(int(number), tuple(place)) for number, place in zip(numbers, positions_bohr, strict=True)]
+    molecule.atom = [
+        (int(number), tuple(place)) for number, place in zip(numbers, positions_bohr, strict=True)
+    ]
     molecule.unit = "Bohr"
     molecule.basis = {_symbol(number): _gaussians(number) for number in {int(n) for n in numbers}}
     molecule.cart = False
@@ -116,7 +123,9 @@ def _rows(name: str) -> list[dict[str, str]]:
 def _shell_table() -> dict[int, tuple[Shell, ...]]:
     table: dict[int, list[Shell]] = {}
     for row in _rows("gfn2_shells.csv"):
-        shell = Shell(row["shell"], float(row["slater_exponent"]), int(row["gaussians"]), float(row["hardness"]))
+        shell = Shell(
+            row["shell"], float(row["slater_exponent"]), int(row["gaussians"]), float(row["hardness"])
+        )
         table.setdefault(int(row["atomic_number"]), []).append(shell)
     return {number: tuple(found) for number, found in table.items()}
 

@@ -6,9 +6,8 @@ from importlib.metadata import version
 from typing import Any
 
 import numpy as np
-from tblite.interface import Calculator
-
 from orchil_schemas import FloatArray, IntArray, NotConverged
+from tblite.interface import Calculator
 
 from .order import libcint_order
 from .types import KELVIN_HARTREE, Evaluation, Wavefunction
@@ -53,7 +52,9 @@ class TbliteGroundState:
             self._results = self._calculator.singlepoint(self._results)
         except RuntimeError as error:
             self._results = None
-            raise NotConverged(f"GFN2-xTB self-consistent field failed: {' '.join(str(error).split())}") from None
+            raise NotConverged(
+                f"GFN2-xTB self-consistent field failed: {' '.join(str(error).split())}"
+            ) from None
         return Evaluation(float(self._results.get("energy")), np.asarray(self._results.get("gradient")))
 
     def _open(self, positions_bohr: FloatArray) -> Any:

@@ -6,11 +6,10 @@ from functools import cached_property
 from importlib.metadata import version
 
 import numpy as np
+from orchil_schemas import FloatArray, IntArray, NotConverged
 from xtb.interface import Calculator, Param, Results, XTBException
 from xtb.libxtb import VERBOSITY_MUTED
 from xtb.utils import get_solvent
-
-from orchil_schemas import FloatArray, IntArray, NotConverged
 
 from .order import libcint_order
 from .types import Evaluation, Wavefunction
@@ -49,7 +48,9 @@ class LibxtbGroundState:
             self._results = self._calculator.singlepoint(self._results)
         except XTBException as error:
             self._results = None
-            raise NotConverged(f"GFN2-xTB self-consistent field failed: {' '.join(str(error).split())}") from None
+            raise NotConverged(
+                f"GFN2-xTB self-consistent field failed: {' '.join(str(error).split())}"
+            ) from None
         return Evaluation(self._results.get_energy(), self._results.get_gradient())
 
     @cached_property

@@ -7,7 +7,6 @@ excitation stage (C^T S C = 1) would fail on any mistake here.
 from __future__ import annotations
 
 import numpy as np
-
 from orchil_schemas import FloatArray, IntArray
 
 from .basis import basis_map

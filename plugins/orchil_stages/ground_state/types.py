@@ -27,9 +27,9 @@ class Evaluation:
 class Wavefunction:
     """Converged GFN2-xTB orbitals at one geometry.
 
-    ``coefficients`` has shape (basis functions, orbitals) with the basis functions atom by atom, shell by shell in
-    the order of libcint (p: x, y, z; d: xy, yz, z2, xz, x2-y2). Energies in hartree, occupations 0 to 2, atomic
-    charges in e, dipole in e bohr.
+    ``coefficients`` has shape (basis functions, orbitals) with the basis functions atom by atom, shell by
+    shell in the order of libcint (p: x, y, z; d: xy, yz, z2, xz, x2-y2). Energies in hartree, occupations 0
+    to 2, atomic charges in e, dipole in e bohr.
     """
 
     energies: FloatArray
@@ -69,4 +69,6 @@ class Opener(Protocol):
         accuracy: float,
         temperature_kelvin: float,
         max_iterations: int,
-    ) -> GroundState: ...
+    ) -> GroundState:
+        """A calculator for the species; nothing is computed yet."""
+        ...

@@ -21,7 +21,6 @@ from orchil_schemas import (
     IntArray,
     NotConverged,
     StageError,
-    TopologyChanged,
 )
 
 from orchil_stages.ground_state import BOHR_ANGSTROM, Evaluation, GroundState, check_result, open_ground_state
@@ -91,29 +90,35 @@ def relax_one(
 def relax_harder(species: Species, x: FloatArray, settings: RelaxSettings) -> Geometry:
     """The second try: twice the gradients, water for a zwitterion in the gas phase, then walls."""
     patient = settings.model_copy(update={"max_gradients": 2 * settings.max_gradients})
-    try:
-        return relax_one(species, x, patient)
-    except TopologyChanged:
-        if species.solvation is not None or not species.zwitterion:
-            return _relax_held(species, x, patient)
-    geometry = _relax_held(replace(species, solvation=STAND_IN), x, patient)
+    geometry = _relax_unchecked(species, x, patient)
+    changes = _changes(species, geometry)
+    if not changes:
+        return geometry
+    if species.solvation is not None or not species.zwitterion:
+        return _relax_held(species, x, patient, changes)
+    geometry = _relax_held(replace(species, solvation=STAND_IN), x, patient, ())
     return _noted(geometry, f"relaxed in {STAND_IN}: the drawn form does not hold in the gas phase")
 
 
-def _relax_held(species: Species, x: FloatArray, settings: RelaxSettings) -> Geometry:
+def _relax_held(
+    species: Species, x: FloatArray, settings: RelaxSettings, held: tuple[Change, ...]
+) -> Geometry:
     """Hold each distance that changes, for a few rounds; the last changes are raised."""
-    held: tuple[Change, ...] = ()
     for _ in range(HOLD_ROUNDS):
         geometry = _relax_unchecked(species, x, settings, held)
-        changes = find_changes(species.numbers, species.bonds, geometry.positions_angstrom)
+        changes = _changes(species, geometry)
         if not changes:
             return geometry
-        held += tuple(changes)
+        held += changes
     return relax_one(species, x, settings, held)
 
 
+def _changes(species: Species, geometry: Geometry) -> tuple[Change, ...]:
+    return tuple(find_changes(species.numbers, species.bonds, geometry.positions_angstrom))
+
+
 def _relax_unchecked(
-    species: Species, x: FloatArray, settings: RelaxSettings, held: tuple[Change, ...]
+    species: Species, x: FloatArray, settings: RelaxSettings, held: tuple[Change, ...] = ()
 ) -> Geometry:
     walls = Walls(held) if held else None
     minimum, state, kelvin = _climb(species, x, settings, walls.around if walls else lambda plain: plain)

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 from importlib.metadata import PackageNotFoundError, version
-from typing import ClassVar
 
 from orchil_schemas import (
     Availability,
@@ -40,7 +39,7 @@ class Relax:
     version = "1"
     needs: tuple[type[Record], ...] = (Identity, Medium, Conformers)
     makes: tuple[type[Record], ...] = (Geometry,)
-    Settings: ClassVar[type[Frozen]] = RelaxSettings
+    Settings: type[Frozen] = RelaxSettings
     time_limit_seconds = 600.0
 
     def found(self) -> Availability:

@@ -24,7 +24,12 @@ def main() -> None:
     """Read the command line and run one step."""
     parser = argparse.ArgumentParser(prog="python -m orchil_stages.training", description=__doc__)
     steps = parser.add_subparsers(required=True)
-    for name, run in (("relax", relax), ("fit", hamiltonian.fit), ("calibrate", calibration.calibrate), ("table", benchmark.table)):
+    for name, run in (
+        ("relax", relax),
+        ("fit", hamiltonian.fit),
+        ("calibrate", calibration.calibrate),
+        ("table", benchmark.table),
+    ):
         step = steps.add_parser(name)
         step.add_argument("data", type=Path)
         step.add_argument("cache", type=Path)

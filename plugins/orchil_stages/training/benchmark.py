@@ -5,10 +5,11 @@ from __future__ import annotations
 import argparse
 
 import numpy as np
-
+from numpy.typing import NDArray
 from orchil_schemas import FloatArray
 
-from ..excite.parameters import trained_parameters
+from orchil_stages.excite.parameters import trained_parameters
+
 from .dataset import is_test, scaffold
 from .fit import Evaluated, Job, Shards
 from .hamiltonian import make_jobs, window_size
@@ -24,7 +25,10 @@ def table(chosen: argparse.Namespace) -> None:
     shards.close()
     known = read_tddft(chosen.data / "tddft_vertical.csv")
     test = np.array([is_test(scaffold(job.measured.smiles)) for job in jobs])
-    print(f"{int(test.sum())} dyes on scaffolds never used in training; linear fits made on the {int((~test).sum())} others")
+    print(
+        f"{int(test.sum())} dyes on scaffolds never used in training; "
+        f"linear fits made on the {int((~test).sum())} others"
+    )
     print(render(comparison(jobs, found, known, test)))
 
 
@@ -37,7 +41,7 @@ def one_per_dye(jobs: list[Job]) -> list[Job]:
 
 
 def comparison(
-    jobs: list[Job], found: list[Evaluated], known: dict[str, float], test: FloatArray
+    jobs: list[Job], found: list[Evaluated], known: dict[str, float], test: NDArray[np.bool_]
 ) -> list[tuple[str, Errors]]:
     """Rows of the table: all dyes kept for testing, then those of them with a published TD-DFT energy."""
     measured = np.array([job.measured.energy_ev for job in jobs])
@@ -58,6 +62,6 @@ def comparison(
     return [(name, errors(values[chosen], measured[chosen])) for name, values, chosen in rows]
 
 
-def _fitted(values: FloatArray, measured: FloatArray, training: FloatArray) -> FloatArray:
+def _fitted(values: FloatArray, measured: FloatArray, training: NDArray[np.bool_]) -> FloatArray:
     slope, intercept = linear_fit(values[training], measured[training])
     return slope * values + intercept

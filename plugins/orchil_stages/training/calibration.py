@@ -13,21 +13,22 @@ from pathlib import Path
 from typing import Any
 
 import numpy as np
+from orchil_schemas import HC_EV_NM, FloatArray, Identity, LibraryRow
 
-from orchil_schemas import HC_EV_NM, FloatArray, Identity, Inputs, IntakeNotes, LibraryRow
+from orchil_stages.by_hand import run_stages
+from orchil_stages.calibrate import linear
+from orchil_stages.calibrate.features import NAMES, band_features
+from orchil_stages.calibrate.stage import COVERAGES
+from orchil_stages.excite.model import solve_states
+from orchil_stages.excite.parameters import trained_parameters
+from orchil_stages.excite.stage import ExciteSettings
 
-from ..calibrate import linear
-from ..calibrate.features import NAMES, band_features
-from ..excite.model import solve_states
-from ..excite.parameters import trained_parameters
-from ..excite.stage import ExciteSettings
 from .dataset import Measurement, fold, is_test
 from .fit import Job
 from .hamiltonian import make_jobs, window_size
 from .windows import load_row
 
 CALIBRATION_FILE = Path(linear.__file__).with_name("trained.json")
-COVERAGES = (0.5, 0.8, 0.9, 0.95)
 _RIDGES = (0.3, 1.0, 3.0, 10.0, 30.0, 100.0, 300.0)
 _CM1_EV = 1.239841984e-4
 _SMALLEST_ERROR = 0.02
@@ -44,7 +45,9 @@ class Sample:
 
 
 def calibrate(chosen: argparse.Namespace) -> None:
-    """Fit on the training scaffolds, take the intervals from the test scaffolds, write the calibration file."""
+    """Fit on the training scaffolds, take the intervals from the test scaffolds, write the calibration
+    file.
+    """
     samples = load_samples(make_jobs(chosen.data, chosen.cache, chosen.limit), chosen.cache, chosen.workers)
     fitted = {name: fit_target(samples, values) for name, values in targets(samples).items()}
     text = json.dumps({"about": {"features": NAMES}, **fitted, **feature_spread(samples)}, indent=1)
@@ -60,17 +63,19 @@ def load_samples(jobs: Sequence[Job], cache: Path, workers: int) -> list[Sample]
 
 def sample(job: Job, cache: Path) -> Sample | None:
     """One row, or None when its ground state fails."""
-    from ..excite.model import Opened
-    from ..excite.report import orbitals_record, transitions_record
-    from ..excite.window import Assertions
-    from ..ground_state import Wavefunction
+    from orchil_stages.excite.model import Opened
+    from orchil_stages.excite.report import orbitals_record, transitions_record
+    from orchil_stages.excite.window import Assertions
+    from orchil_stages.ground_state import Wavefunction
 
     row = load_row(job.measured, job.geometry, cache, window_size())
     if row is None:
         return None
     window = row.prepared.window
     settings = ExciteSettings()
-    states, _ = solve_states(row.prepared, trained_parameters(), row.medium, row.ground_dipole, settings.states)
+    states, _ = solve_states(
+        row.prepared, trained_parameters(), row.medium, row.ground_dipole, settings.states
+    )
     if states.energies[0] <= 0.2:
         return None
     empty = np.zeros(0)
@@ -82,22 +87,16 @@ def sample(job: Job, cache: Path) -> Sample | None:
 
 
 def _identity(measured: Measurement) -> Identity:
-    from ..intake import Intake
-    from .geometries import chain_context
+    from orchil_stages.intake import Intake
 
-    stage = Intake()
-    row = LibraryRow(structure=measured.smiles, medium=measured.medium)
-    with chain_context(measured.smiles) as context:
-        made = list(stage.run(Inputs([row]), stage.Settings(), context))
-    assert any(isinstance(record, IntakeNotes) for record in made)
-    return next(record for record in made if isinstance(record, Identity))
+    return run_stages(LibraryRow(structure=measured.smiles, medium=measured.medium), (Intake(),))[Identity]
 
 
 def targets(samples: Sequence[Sample]) -> dict[str, FloatArray]:
     """What each model predicts, NaN where not measured.
 
-    position: measured minus physics (eV); absorptivity: log10; width: log10 of the width in eV; stokes: physics minus
-    measured emission (eV).
+    position: measured minus physics (eV); absorptivity: log10; width: log10 of the width in eV; stokes:
+    physics minus measured emission (eV).
     """
 
     def column(read: Any) -> FloatArray:
@@ -107,12 +106,16 @@ def targets(samples: Sequence[Sample]) -> dict[str, FloatArray]:
         "position": column(lambda s: s.measured.energy_ev - s.physics_ev),
         "absorptivity": column(lambda s: s.measured.log10_absorptivity),
         "width": column(lambda s: s.measured.width_cm1 and np.log10(s.measured.width_cm1 * _CM1_EV)),
-        "stokes": column(lambda s: s.measured.emission_nm and s.physics_ev - HC_EV_NM / s.measured.emission_nm),
+        "stokes": column(
+            lambda s: s.measured.emission_nm and s.physics_ev - HC_EV_NM / s.measured.emission_nm
+        ),
     }
 
 
 def fit_target(samples: Sequence[Sample], values: FloatArray) -> dict[str, Any]:
-    """Ridge on the training scaffolds, its strength by scaffold cross-validation; intervals from the test scaffolds."""
+    """Ridge on the training scaffolds, its strength by scaffold cross-validation; intervals from the test
+    scaffolds.
+    """
     known = np.isfinite(values)
     test = np.array([is_test(s.scaffold) for s in samples])
     features = np.array([s.features for s in samples])
@@ -129,8 +132,9 @@ def fit_target(samples: Sequence[Sample], values: FloatArray) -> dict[str, Any]:
     error = values - intercept - x @ slope
     ratio = (error / expected)[held]
     print(
-        f"{int(train.sum())} rows to fit, ridge {ridge:g}; {int(held.sum())} held out: mean absolute error "
-        f"{np.abs(error[held]).mean():.3f}, before {np.abs(values[held] - np.median(values[train])).mean():.3f}"
+        f"{int(train.sum())} rows to fit, ridge {ridge:g}; {int(held.sum())} held out: "
+        f"mean absolute error {np.abs(error[held]).mean():.3f}, before "
+        f"{np.abs(values[held] - np.median(values[train])).mean():.3f}"
     )
     return {
         "centre": centre.tolist(),
@@ -180,9 +184,14 @@ def conformal(ratio: FloatArray, level: float) -> float:
 
 
 def feature_spread(samples: Sequence[Sample]) -> dict[str, Any]:
-    """Inverse covariance of the standardised features and the 95 and 99.5 % distances of the training rows."""
+    """Inverse covariance of the standardised features and the 95 and 99.5 % distances of the training
+    rows.
+    """
     x = np.array([s.features for s in samples if not is_test(s.scaffold)])
     x = (x - x.mean(axis=0)) / (x.std(axis=0) + 1e-9)
     inverse = np.linalg.inv(np.cov(x.T) + 0.05 * np.eye(x.shape[1]))
     distance = np.sqrt(np.einsum("ni,ij,nj->n", x, inverse, x))
-    return {"feature_inverse": inverse.tolist(), "distance_edges": np.quantile(distance, (0.95, 0.995)).tolist()}
+    return {
+        "feature_inverse": inverse.tolist(),
+        "distance_edges": np.quantile(distance, (0.95, 0.995)).tolist(),
+    }

@@ -13,7 +13,8 @@ _ROWS_PER_DYE = 3
 def dyes_in_order(by_dye: Mapping[str, list[Measurement]]) -> list[tuple[str, str]]:
     """(smiles, medium) to relax: first one dye of every scaffold, then the others; shuffled by hash."""
     seen: set[str] = set()
-    first, rest = [], []
+    first: list[tuple[str, str]] = []
+    rest: list[tuple[str, str]] = []
     for smiles in sorted(by_dye, key=lambda text: hashlib.sha256(text.encode()).hexdigest()):
         if heavy_atoms(smiles) > SCOPE_HEAVY_ATOMS:
             continue

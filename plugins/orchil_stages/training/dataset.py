@@ -1,7 +1,7 @@
 """Reading the measured dyes: quarantine of known faults, scaffolds, choice of rows.
 
-The measured set is Joung, Han, Jeong, Park, Sci. Data 7, 295 (2020). Nothing is deleted: a row that is not used carries
-the reason.
+The measured set is Joung, Han, Jeong, Park, Sci. Data 7, 295 (2020). Nothing is deleted: a row that is not
+used carries the reason.
 """
 
 from __future__ import annotations
@@ -13,10 +13,11 @@ from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
 from statistics import median
+from typing import Any
 
 from orchil_schemas import HC_EV_NM, BadInput
 
-from ..medium import lookup
+from orchil_stages.medium import lookup
 
 SCOPE_NM = (300.0, 1100.0)
 SCOPE_HEAVY_ATOMS = 100
@@ -26,7 +27,9 @@ TEST_SHARE = 4
 
 @dataclass(frozen=True)
 class Measurement:
-    """One dye in one medium: maxima in nm, log10 molar absorptivity, width in cm^-1, None where not measured."""
+    """One dye in one medium: maxima in nm, log10 molar absorptivity, width in cm^-1, None where not
+    measured.
+    """
 
     smiles: str
     medium: str
@@ -47,7 +50,9 @@ class Measurement:
 
 
 def read_measured(path: Path) -> list[Measurement]:
-    """All rows of the measured set with their faults; repeats of one dye in one medium become their median."""
+    """All rows of the measured set with their faults; repeats of one dye in one medium become their
+    median.
+    """
     with path.open(encoding="utf-8", newline="") as lines:
         rows = [_measurement(row) for row in csv.DictReader(lines)]
     return _merge_repeats(rows)
@@ -116,24 +121,37 @@ def _merged(group: Sequence[Measurement]) -> Measurement:
         values = [getattr(row, name) for row in sound if getattr(row, name) is not None]
         return median(values) if values else None
 
-    fields = ("absorption_nm", "emission_nm", "log10_absorptivity", "width_cm1", "lifetime_ns", "quantum_yield")
-    return replace(sound[0], **{name: middle(name) for name in fields})
+    fields = (
+        "absorption_nm",
+        "emission_nm",
+        "log10_absorptivity",
+        "width_cm1",
+        "lifetime_ns",
+        "quantum_yield",
+    )
+    middles: dict[str, Any] = {name: middle(name) for name in fields}
+    return replace(sound[0], **middles)
 
 
 def scaffold(smiles: str) -> str:
-    """Bemis-Murcko scaffold (J. Med. Chem. 39, 2887, 1996) as SMILES; "acyclic" for molecules without rings."""
-    from rdkit import Chem, RDLogger
-    from rdkit.Chem.Scaffolds import MurckoScaffold
+    """Bemis-Murcko scaffold (J. Med. Chem. 39, 2887, 1996) as SMILES; "acyclic" for molecules without
+    rings.
+    """
+    from rdkit import Chem, rdBase
+    from rdkit.Chem.Scaffolds.MurckoScaffold import GetScaffoldForMol
 
-    RDLogger.DisableLog("rdApp.*")
-    molecule = Chem.MolFromSmiles(smiles)
+    with rdBase.BlockLogs():
+        molecule = Chem.MolFromSmiles(smiles)
     if molecule is None:
         return "unreadable"
-    return Chem.MolToSmiles(MurckoScaffold.GetScaffoldForMol(molecule), isomericSmiles=False) or "acyclic"
+    core = GetScaffoldForMol(molecule)  # type: ignore[no-untyped-call]
+    return Chem.MolToSmiles(core, isomericSmiles=False) or "acyclic"
 
 
 def is_test(scaffold_smiles: str) -> bool:
-    """Is this scaffold kept out of training? Decided by a hash of the scaffold alone, the same on every machine."""
+    """Is this scaffold kept out of training? Decided by a hash of the scaffold alone, the same on every
+    machine.
+    """
     return int(hashlib.sha256(scaffold_smiles.encode()).hexdigest(), 16) % TEST_SHARE == 0
 
 

@@ -2,19 +2,19 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from functools import cache
 
 import numpy as np
+from orchil_schemas import FloatArray, IntArray
 
-from orchil_schemas import FloatArray
-
-from ..excite.kernels import coulomb_kernel, exchange_kernel, hardness_names
-from ..excite.levels import charge_names, hopping_names, level_names
-from ..excite.parameters import ELEMENTS, Parameters, index
-from ..excite.response import Prepared
-from ..excite.solvation import SOLVENT_NAMES
-from ..excite.window import hardness
+from orchil_stages.excite.kernels import coulomb_kernel, exchange_kernel, hardness_names
+from orchil_stages.excite.levels import charge_names, hopping_names, level_names
+from orchil_stages.excite.parameters import ELEMENTS, Parameters, index
+from orchil_stages.excite.response import Prepared
+from orchil_stages.excite.solvation import SOLVENT_NAMES
+from orchil_stages.excite.window import hardness
 
 _STEP = 1e-4
 
@@ -64,7 +64,9 @@ def _coulomb(gradient: FloatArray, prepared: Prepared, parameters: Parameters, a
     _kernel(gradient, prepared, parameters, _Kernel("coulomb", scalars, coulomb_kernel), weight)
 
 
-def _exchange(gradient: FloatArray, prepared: Prepared, parameters: Parameters, amplitude: FloatArray) -> None:
+def _exchange(
+    gradient: FloatArray, prepared: Prepared, parameters: Parameters, amplitude: FloatArray
+) -> None:
     charge = np.einsum("Aia,ia->A", prepared.blocks.transition, amplitude)
     scalars = ("exchange_strength", "exchange_exponent")
     _kernel(
@@ -80,7 +82,7 @@ def _exchange(gradient: FloatArray, prepared: Prepared, parameters: Parameters, 
 class _Kernel:
     name: str
     scalars: tuple[str, ...]
-    make: object
+    make: Callable[[IntArray, FloatArray, Parameters], FloatArray]
 
 
 def _kernel(
@@ -89,13 +91,12 @@ def _kernel(
     numbers, distance = prepared.window.numbers, prepared.distance
 
     def made(at: Parameters) -> FloatArray:
-        result: FloatArray = kernel.make(numbers, distance, at)  # type: ignore[operator]
-        return result
+        return kernel.make(numbers, distance, at)
 
     for name in kernel.scalars:
         up, down = (_moved(parameters, name, step) for step in (_STEP, -_STEP))
         gradient[index()[name]] = float((weight * (made(up) - made(down))).sum()) / (2 * _STEP)
-    # the kernel depends on the hardness through its mean over the two atoms, so one derivative serves all elements
+    # the kernel depends on the hardness through its mean over two atoms: one derivative serves all elements
     names = hardness_names(kernel.name)
     changes = parameters.several(names)
     exponent = parameters[f"{kernel.name}_exponent"]

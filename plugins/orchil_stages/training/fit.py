@@ -9,12 +9,12 @@ from multiprocessing import get_context
 from pathlib import Path
 
 import numpy as np
-
 from orchil_schemas import FloatArray, Geometry
 
-from ..excite.bright import first_bright
-from ..excite.model import solve_states
-from ..excite.parameters import Parameters, names, start_parameters
+from orchil_stages.excite.bright import first_bright
+from orchil_stages.excite.model import solve_states
+from orchil_stages.excite.parameters import Parameters, names, start_parameters
+
 from .dataset import Measurement
 from .derivatives import energy_gradient
 from .windows import Row, load_row
@@ -58,7 +58,9 @@ _BOUNDS = {
 
 @dataclass(frozen=True)
 class Evaluated:
-    """One row under one parameter vector: energy (eV) of the first bright state, its gradient, f, index; GFN2 gap."""
+    """One row under one parameter vector: energy (eV) of the first bright state, its gradient, f, index; GFN2
+    gap.
+    """
 
     row: int
     energy: float
@@ -110,7 +112,8 @@ class Shards:
         numbered = list(enumerate(jobs))
         self._pools = [ProcessPoolExecutor(1, mp_context=get_context("spawn")) for _ in range(workers)]
         loading = [
-            pool.submit(_load_shard, numbered[w::workers], cache, window) for w, pool in enumerate(self._pools)
+            pool.submit(_load_shard, numbered[w::workers], cache, window)
+            for w, pool in enumerate(self._pools)
         ]
         self.usable = np.zeros(len(jobs), dtype=bool)
         for future in loading:
@@ -144,7 +147,9 @@ class Problem:
             (((vector - self.start) / self.widths) ** 2).sum()
         )
 
-    def step(self, energies: FloatArray, jacobian: FloatArray, vector: FloatArray, damping: float) -> FloatArray:
+    def step(
+        self, energies: FloatArray, jacobian: FloatArray, vector: FloatArray, damping: float
+    ) -> FloatArray:
         """The damped Gauss-Newton step."""
         residual = energies - self.targets
         robust = self.weights * np.minimum(1.0, HUBER_EV / np.maximum(np.abs(residual), 1e-9))
@@ -152,8 +157,7 @@ class Problem:
         normal = (jacobian.T * robust) @ jacobian + np.diag(prior * (1.0 + damping))
         normal[np.diag_indices_from(normal)] += damping * 1e-3 * np.diag(normal)
         gradient = jacobian.T @ (robust * residual) + prior * (vector - self.start)
-        step: FloatArray = -np.linalg.solve(normal, gradient)
-        return step
+        return np.asarray(np.linalg.solve(normal, -gradient), dtype=np.float64)
 
     def _prior_scale(self) -> float:
         return _PRIOR_WEIGHT * HUBER_EV**2

@@ -1,18 +1,20 @@
-"""Relaxed geometries of the training dyes, kept in a cache folder so that a second run goes on where the first stopped."""
+"""Relaxed geometries of the training dyes, kept in a cache folder so that a second run goes on where the
+first stopped.
+"""
 
 from __future__ import annotations
 
 import json
 import multiprocessing
 import os
-import tempfile
 import time
 from collections.abc import Iterable, Iterator
-from contextlib import contextmanager
 from dataclasses import asdict, dataclass
 from pathlib import Path
 
-from orchil_schemas import Context, Geometry, Inputs, LibraryRow, Record, StageError
+from orchil_schemas import Geometry, LibraryRow, StageError
+
+from orchil_stages.by_hand import run_stages
 
 CACHE_NAME = "geometries.jsonl"
 
@@ -56,36 +58,18 @@ def read_cache(cache: Path) -> list[Relaxed]:
 
 def relax_one(dye: tuple[str, str]) -> Relaxed:
     """The chain intake, embed, relax for one dye, exactly as a screen runs it."""
-    from ..embed import Embed
-    from ..intake import Intake
-    from ..relax import Relax
+    from orchil_stages.embed import Embed
+    from orchil_stages.intake import Intake
+    from orchil_stages.relax import Relax
 
     smiles, medium = dye
     start = time.process_time()
-    records: list[Record] = [LibraryRow(structure=smiles, medium=medium)]
-    reason = None
+    geometry, reason = None, None
     try:
-        for stage in (Intake(), Embed(), Relax()):
-            with chain_context(smiles) as context:
-                records.extend(stage.run(Inputs(records), stage.Settings(), context))
+        made = run_stages(LibraryRow(structure=smiles, medium=medium), (Intake(), Embed(), Relax()))
+        geometry = made[Geometry].canonical_json
     except StageError as error:
         reason = f"{error.reason_code}: {error}"
     except Exception as error:
         reason = f"unexpected: {type(error).__name__}: {error}"
-    found = next((record for record in records if isinstance(record, Geometry)), None)
-    text = found.canonical_json if found else None
-    return Relaxed(smiles, medium, text, reason, time.process_time() - start)
-
-
-@contextmanager
-def chain_context(smiles: str) -> Iterator[Context]:
-    """A context for running a stage by hand."""
-    with tempfile.TemporaryDirectory() as scratch:
-        yield Context(scratch=Path(scratch), seed=chain_seed(smiles))
-
-
-def chain_seed(smiles: str) -> int:
-    """A positive seed that depends on the dye alone."""
-    import hashlib
-
-    return int(hashlib.sha256(smiles.encode()).hexdigest()[:7], 16) + 1
+    return Relaxed(smiles, medium, geometry, reason, time.process_time() - start)

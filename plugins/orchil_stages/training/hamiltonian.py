@@ -10,12 +10,12 @@ from collections.abc import Mapping
 from pathlib import Path
 
 import numpy as np
-
 from orchil_schemas import FloatArray, Geometry
 
-from ..excite import parameters as excite_parameters
-from ..excite.parameters import Parameters, load_parameters, names, start_parameters
-from ..excite.stage import ExciteSettings
+from orchil_stages.excite import parameters as excite_parameters
+from orchil_stages.excite.parameters import Parameters, load_parameters, names, start_parameters
+from orchil_stages.excite.stage import ExciteSettings
+
 from .choice import rows_for_training
 from .dataset import is_test, media_of_dyes, read_measured, scaffold
 from .fit import Job, Shards, make_problem, train
@@ -36,7 +36,7 @@ def make_jobs(data: Path, cache: Path, limit: int | None = None) -> list[Job]:
     """Measurements with a relaxed geometry, up to three media per dye."""
     by_dye = media_of_dyes(read_measured(data / "measured_dyes.csv"))
     relaxed = [done for done in read_cache(cache) if done.geometry is not None and done.smiles in by_dye]
-    jobs = []
+    jobs: list[Job] = []
     for done in relaxed[:limit]:
         geometry = Geometry.model_validate_json(done.geometry or "")
         jobs.extend(Job(row, geometry) for row in rows_for_training(by_dye[done.smiles]))
@@ -46,7 +46,8 @@ def make_jobs(data: Path, cache: Path, limit: int | None = None) -> list[Job]:
 def weights(jobs: list[Job], training: FloatArray) -> FloatArray:
     """One vote per dye, spread over its rows; zero for test rows."""
     rows = Counter(job.measured.smiles for job in jobs)
-    return training / np.array([rows[job.measured.smiles] for job in jobs])
+    votes: FloatArray = training / np.array([rows[job.measured.smiles] for job in jobs])
+    return votes
 
 
 def fit(chosen: argparse.Namespace) -> None:
@@ -64,7 +65,9 @@ def fit(chosen: argparse.Namespace) -> None:
         shown = [(f"step {iteration} training", errors(energies[~test], targets[~test]))]
         if test.any():
             shown.append((f"step {iteration} test", errors(energies[test], targets[test])))
-        print(f"objective {objective:.3f} after {time.monotonic() - start:.0f} s\n{render(shown)}", flush=True)
+        print(
+            f"objective {objective:.3f} after {time.monotonic() - start:.0f} s\n{render(shown)}", flush=True
+        )
         write_parameters(Parameters(vector), {"rows": int((~test).sum()), "step": iteration}, chosen.cache)
 
     train(shards.evaluate, problem, _start(chosen.cache).vector, ITERATIONS, report)

@@ -8,9 +8,8 @@ from dataclasses import dataclass
 from pathlib import Path
 
 import numpy as np
-from scipy.stats import spearmanr
-
 from orchil_schemas import FloatArray
+from scipy.stats import spearmanr
 
 
 @dataclass(frozen=True)
@@ -48,7 +47,9 @@ def linear_fit(x: FloatArray, y: FloatArray) -> tuple[float, float]:
 
 
 def read_tddft(path: Path) -> dict[str, float]:
-    """Vertical energies (eV) of the strongest state, wB97X-D3: Greenman, Green, Gomez-Bombarelli, Chem. Sci. 13, 1152."""
+    """Vertical energies (eV) of the strongest state, wB97X-D3: Greenman, Green, Gomez-Bombarelli, Chem. Sci.
+    13, 1152.
+    """
     with path.open(encoding="utf-8", newline="") as lines:
         return {row["smiles"]: float(row["vertical_energy_of_strongest_eV"]) for row in csv.DictReader(lines)}
 
@@ -57,5 +58,7 @@ def render(rows: Mapping[str, Errors] | Sequence[tuple[str, Errors]]) -> str:
     """A plain-text table."""
     pairs = rows.items() if isinstance(rows, Mapping) else rows
     lines = [f"{'prediction':<58}{'dyes':>6}{'MAE/eV':>9}{'bias/eV':>9}{'R2':>8}{'Spearman':>10}"]
-    lines += [f"{n:<58}{e.count:>6}{e.mae:>9.3f}{e.bias:>9.3f}{e.r2:>8.3f}{e.spearman:>10.3f}" for n, e in pairs]
+    lines += [
+        f"{n:<58}{e.count:>6}{e.mae:>9.3f}{e.bias:>9.3f}{e.r2:>8.3f}{e.spearman:>10.3f}" for n, e in pairs
+    ]
     return "\n".join(lines)

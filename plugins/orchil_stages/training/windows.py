@@ -9,10 +9,11 @@ from pathlib import Path
 
 from orchil_schemas import FloatArray, Geometry, Medium, StageError
 
-from ..excite.response import Prepared, prepare
-from ..excite.model import open_states
-from ..excite.window import Window
-from ..medium import lookup
+from orchil_stages.excite.model import open_states
+from orchil_stages.excite.response import Prepared, prepare
+from orchil_stages.excite.window import Window
+from orchil_stages.medium import lookup
+
 from .dataset import Measurement, scaffold
 
 

@@ -1,0 +1,5 @@
+"""``python -m orchil`` is the command ``orchil``."""
+
+from .cli import main
+
+main()
