@@ -20,6 +20,7 @@ from multiprocessing.connection import Connection, wait
 from pathlib import Path
 from typing import IO
 
+from .blas import kernel_choice
 from .errors import RunError
 from .messages import READY, Reply, Setup, Task
 
@@ -146,7 +147,7 @@ class Supervisor:
             stdin=subprocess.DEVNULL,
             stdout=subprocess.DEVNULL,
             stderr=words,
-            env={**os.environ, **ONE_THREAD, **self.environment},
+            env={**os.environ, **ONE_THREAD, **kernel_choice(), **self.environment},
             pass_fds=[theirs.fileno()],
             start_new_session=True,
         )

@@ -127,6 +127,7 @@ def _checked(stage: Stage, made: Iterable[Record]) -> list[Payload]:
         if type(record) in by_kind:
             raise BadOutputError(f"the stage returned two {record.kind} records; one is allowed")
         by_kind[type(record)] = record
+        _check_quantities(record)
     missing = [kind.kind for kind in stage.makes if kind not in by_kind]
     if missing:
         raise BadOutputError(f"the stage did not return {' and '.join(missing)}")
@@ -134,6 +135,18 @@ def _checked(stage: Stage, made: Iterable[Record]) -> list[Payload]:
         return [(kind.kind, by_kind[kind].canonical_json) for kind in stage.makes]
     except (ValueError, TypeError) as error:
         raise BadOutputError(f"a record cannot be written as JSON: {error}") from error
+
+
+def _check_quantities(record: Record) -> None:
+    """Ask for the quantities here, where a fault costs one candidate, and not first in the coordinator."""
+    try:
+        names = {one.name for one in record.quantities()}
+    except Exception as error:
+        raise BadOutputError(
+            f"the quantities of {record.kind} cannot be read: {type(error).__name__}: {error}"
+        ) from error
+    if strange := names - {one.name for one in record.offers}:
+        raise BadOutputError(f"{record.kind} has quantities it does not offer: {', '.join(sorted(strange))}")
 
 
 def _failure(code: str, message: str, *, recoverable: bool = False) -> dict[str, Any]:

@@ -50,6 +50,7 @@ class Identity(Record):
     )
 
     def quantities(self) -> tuple[Quantity, ...]:
+        """The numbers listed in ``offers``."""
         return (
             Quantity(name="molar_mass_g_mol", value=self.molar_mass_g_mol, unit="g/mol"),
             Quantity(name="heavy_atoms", value=self.heavy_atoms, unit="1"),
@@ -130,6 +131,7 @@ class Orbitals(Record):
     )
 
     def quantities(self) -> tuple[Quantity, ...]:
+        """The numbers listed in ``offers``."""
         return (
             Quantity(name="orbital_gap_ev", value=self.gap_ev, unit="eV"),
             Quantity(name="ground_dipole_debye", value=float(np.linalg.norm(self.dipole_debye)), unit="debye"),
@@ -212,6 +214,7 @@ class Band(Record):
     )
 
     def quantities(self) -> tuple[Quantity, ...]:
+        """The numbers listed in ``offers``."""
         made = [
             Quantity(
                 name="absorption_max_nm",

@@ -70,7 +70,7 @@ class CheckResult:
 
 @dataclass(frozen=True)
 class Check:
-    """A short check that this machine works as it should (a published value is reproduced, a part answers)."""
+    """A short check that this machine works as it should (a published value comes out, a part answers)."""
 
     name: str
     run: Callable[[], CheckResult]
@@ -80,8 +80,8 @@ class Check:
 class Stage(Protocol):
     """One step of the chain for one candidate. Pure: same inputs, settings and seed, same records.
 
-    Optional: a method ``check_brief(brief: Brief) -> list[str]`` that returns problems with the brief as whole
-    sentences (an unknown medium, say); the engine asks it before the first candidate and refuses the brief on any.
+    Optional: a method ``check_brief(brief: Brief) -> list[str]`` that returns problems with the brief (an unknown
+    medium, say) as sentences; the engine asks it before the first candidate and refuses the brief on any.
     """
 
     name: str

@@ -147,16 +147,12 @@ def report(rows: list[Row]) -> None:
     gap = np.abs([row.gap_error for row in rows])
     if np.isfinite(left).any():
         print(f"energy left below 2e-4 hartree: {np.mean(left < 2e-4):.3f}, median {np.median(left):.1e}")
-        print(
-            f"gap within 0.01 eV: {np.mean(gap < 0.01):.3f}, median {np.median(gap):.4f}, most {max(gap):.3f}"
-        )
+        print(f"gap within 0.01 eV: {np.mean(gap < 0.01):.3f}, median {np.median(gap):.4f}, most {max(gap):.3f}")
     both = [row for row in rows if row.plain_gradients]
     if both:
         ratio = sum(row.seconds for row in both) / sum(row.plain_seconds for row in both)
         plain = np.mean([row.plain_gradients for row in both])
-        print(
-            f"ASE L-BFGS on {len(both)} dyes: {plain:.1f} gradients; our CPU seconds are {ratio:.2f} of its"
-        )
+        print(f"ASE L-BFGS on {len(both)} dyes: {plain:.1f} gradients; our CPU seconds are {ratio:.2f} of its")
 
 
 def main() -> int:

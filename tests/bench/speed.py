@@ -1,8 +1,8 @@
 """How long the chain takes and where the time goes: ``python tests/bench/speed.py [--dyes 40]``.
 
-Screens dyes of the published absorption maxima (mean of 54 atoms with hydrogens) with one worker, then with two, and prints
-CPU-seconds by stage, the share that is not chemistry, and the gain of the second worker. Start-up (imports of coordinator
-and workers) is measured by a screen of one small row and shown apart.
+Screens dyes of the published absorption maxima (mean of 54 atoms with hydrogens) with one worker, then with two, and
+prints CPU-seconds by stage, the share that is not chemistry, and the gain of the second worker. Start-up (imports of
+coordinator and workers) is measured by a screen of one small row and shown apart.
 """
 
 from __future__ import annotations
@@ -66,7 +66,7 @@ def main() -> None:
 
 
 def sample(count: int) -> list[tuple[str, str, int]]:
-    """(smiles, medium, atoms) of dyes whose mean size is that of the bar: each next one keeps the mean nearest to it."""
+    """(smiles, medium, atoms) of dyes of a given mean size: each next one keeps the mean nearest to it."""
     with FACTS.open(encoding="utf-8", newline="") as lines:
         rows = [(row["smiles"], row["medium"]) for row in csv.DictReader(lines)]
     sizes = {smiles: Chem.AddHs(Chem.MolFromSmiles(smiles)).GetNumAtoms() for smiles, _ in rows}

@@ -34,7 +34,7 @@ def night(fakes, tmp_path, monkeypatch):
     monkeypatch.setenv("FAKE_RUNS", str(marks))
     store_path = tmp_path / "night.db"
 
-    def run(*words, brief=BRIEF, workers=2, retry_failed=False, header="smiles", memory=MEMORY_BYTES):
+    def run(*words, brief=BRIEF, workers=1, retry_failed=False, header="smiles", memory=MEMORY_BYTES):
         (tmp_path / "words.csv").write_text("\n".join([header, *words]) + "\n")
         (tmp_path / "brief.toml").write_text(brief)
         made = plan(tmp_path / "words.csv", tmp_path / "brief.toml", fakes)

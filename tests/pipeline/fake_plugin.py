@@ -102,7 +102,7 @@ def count_run(word: str) -> None:
 
 class Brewing(Base):
     name, needs, makes, Settings = "brew", (Word,), (Brew,), BrewSettings
-    time_limit_seconds = 1.5
+    time_limit_seconds = 3.0
 
     def run(self, inputs, settings, context):
         word = inputs[Word].text

@@ -19,8 +19,8 @@ BRIEF = 'title = "Words"\nmedium = "water"\n[[want]]\nquantity = "strength"\nat_
 FAILING = {
     "segfault-1": ("brew", "crashed", "SIGSEGV"),
     "exit-1": ("brew", "crashed", "exit code 3"),
-    "forever-1": ("brew", "timeout", "1.5 s"),
-    "stubborn-1": ("brew", "timeout", "1.5 s"),
+    "forever-1": ("brew", "timeout", "3 s"),
+    "stubborn-1": ("brew", "timeout", "3 s"),
     "greedy-1": ("brew", "out_of_memory", "memory"),
     "raise-1": ("brew", "unexpected", "RuntimeError: [bold]odd"),
     "rubbish-1": ("brew", "bad_output", "a str"),

@@ -19,8 +19,8 @@ PLAIN = EmbedSettings()
 
 SIX_HELICENE = "c1ccc2c(c1)ccc1ccc3ccc4ccc5ccccc5c4c3c12"
 BODIPY = "F[B-]1(F)n2cccc2C=C2C=CC=[N+]21"
-POSSIBLE = "CC1(C)[C@@H]2CC[C@]1(C)c1nc3ccccc3nc12"
-IMPOSSIBLE = POSSIBLE.replace("[C@]1(C)", "[C@@]1(C)")
+IMPOSSIBLE = "CC1(C)[C@@H]2CC[C@]1(C)c1nc3ccccc3nc12"
+POSSIBLE = IMPOSSIBLE.replace("[C@]1(C)", "[C@@]1(C)")
 
 
 def molecule_of(smiles: str, conformers: Conformers, index: int = 0) -> Chem.Mol:
@@ -90,6 +90,15 @@ def test_drawn_stereo_is_kept(smiles: str) -> None:
     assert made.stereo_enforced
 
 
+@pytest.mark.parametrize("seed", [1, 2, 3, 4])
+def test_an_undrawn_double_bond_becomes_the_stable_isomer(seed: int) -> None:
+    # trans-Stilbene lies some 19 kJ/mol below cis (Williams, J. Am. Chem. Soc. 64, 1395, 1942; from memory)
+    smiles = "C(=Cc1ccccc1)c1ccccc1"
+    molecule = molecule_of(smiles, embed_structures(smiles, PLAIN, seed=seed))
+    Chem.AssignStereochemistryFrom3D(molecule)
+    assert Chem.MolToSmiles(Chem.RemoveHs(molecule)) == Chem.CanonSmiles("c1ccccc1/C=C/c1ccccc1")
+
+
 def test_impossible_stereo_is_given_up_and_said_so() -> None:
     # The bridge of a bicyclo[2.2.1] skeleton cannot span its two faces: camphor's bridgeheads are (1R,4R) or
     # (1S,4S) (its IUPAC names), so of the drawings with one bridgehead turned over one cannot exist.
@@ -137,12 +146,12 @@ def test_no_time_is_said_with_a_code() -> None:
 
 
 def test_failure_names_every_rung_with_its_causes(monkeypatch: pytest.MonkeyPatch) -> None:
-    monkeypatch.setattr("orchil_stages.embed.ladder.LADDER", LADDER[:2])
+    monkeypatch.setattr("orchil_stages.embed.ladder.LADDER", LADDER[1:2])
     with pytest.raises(NotConverged) as caught:
         embed_structures(IMPOSSIBLE, PLAIN, seed=1)
     assert caught.value.reason_code == "no_3d"
     message = str(caught.value)
-    assert all(f"{rung.label}: " in message for rung in LADDER[:2])
+    assert all(f"{rung.label}: " in message for rung in LADDER[1:2])
     assert re.search(r"[a-z]+ \d+", message)
 
 

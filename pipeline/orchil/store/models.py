@@ -82,6 +82,9 @@ candidate = sa.Table(
     sa.Column("charge", sa.Integer),
     sa.Column("extra", _json(), nullable=False),
     sa.Column("smiles", sa.Text),
+    sa.Column(
+        "medium_used", sa.Text, comment="as intake understood it; the brief's where the row names none"
+    ),
     sa.Column("status", sa.Text, nullable=False, index=True),
     sa.Column("failed_stage", sa.Text),
     sa.Column("reason_code", sa.Text),

@@ -11,7 +11,7 @@ from operator import itemgetter
 from typing import Any
 
 import sqlalchemy as sa
-from orchil_schemas import Band, Identity, IntakeNotes, Record, Score, Transitions
+from orchil_schemas import Band, Identity, IntakeNotes, Medium, Record, Score, Transitions
 
 from . import bulk, typed
 from .errors import StoreError
@@ -74,6 +74,9 @@ def write_links(connection: sa.Connection, links: Sequence[Link]) -> None:
     _write_typed(connection, current)
 
 
+_KNOWN_LATER = ("failed_stage", "reason_code", "reason", "smiles", "medium_used", "cautions", "duplicate_of")
+
+
 def forget(connection: sa.Connection, candidates: Sequence[int]) -> None:
     """Set candidates back to waiting, without results. Records and finished work stay in the cache."""
     keys = [{"key": owner} for owner in candidates]
@@ -81,7 +84,7 @@ def forget(connection: sa.Connection, candidates: Sequence[int]) -> None:
         return
     for table in (candidate_record, quantity, transition, band):
         connection.execute(sa.delete(table).where(table.c.candidate_id == sa.bindparam("key")), keys)
-    empty = dict.fromkeys(("failed_stage", "reason_code", "reason", "smiles", "cautions", "duplicate_of"))
+    empty = dict.fromkeys(_KNOWN_LATER)
     change = (
         sa.update(candidate).where(candidate.c.id == sa.bindparam("key")).values(status="waiting", **empty)
     )
@@ -178,6 +181,8 @@ def _known_from_intake(links: Sequence[Link]) -> Iterator[Row]:
     for owner, found in links:
         if isinstance(found, Identity):
             yield {"key": owner, "smiles": found.smiles}
+        elif isinstance(found, Medium):
+            yield {"key": owner, "medium_used": found.name}
         elif isinstance(found, IntakeNotes):
             yield {"key": owner, "cautions": typed.joined(found.cautions)}
 

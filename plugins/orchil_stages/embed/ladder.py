@@ -20,6 +20,7 @@ from rdkit.Chem import rdDistGeom
 from .force_field import rank_by_force_field
 from .stage import EmbedSettings
 
+CANDIDATES_FOR_UNDRAWN = 6
 SEEDS_PER_RUNG = 3
 SEED_STEP = 7919
 LARGEST_SEED = 2**31 - 1
@@ -61,7 +62,7 @@ class Rung:
 
 LADDER = (
     Rung("ETKDGv3", 60),
-    Rung("ETKDGv3, random start", 120, random_start=True),
+    Rung("ETKDGv3, random start", 60, random_start=True),
     Rung("distance geometry without knowledge terms", random_start=True, knowledge=False),
     Rung("distance geometry, stereo not enforced", random_start=True, knowledge=False, chirality=False),
     Rung("distance geometry, stereo removed", 0, True, knowledge=False, chirality=False, keep_stereo=False),
@@ -77,17 +78,18 @@ def embed_structures(
     ``NotConverged`` with code "no_3d" and the causes when no rung gives a structure.
     """
     molecule = read_with_hydrogens(smiles)
+    candidates = settings.candidates or max(settings.conformers, _least_candidates(molecule))
     failures: list[str] = []
     for rung in LADDER:
         for rung_seed in _seeds(seed):
             seconds = int(min(settings.rung_seconds, deadline - time.monotonic() - 1.0))
             if seconds < 1:
                 raise NotConverged("no time left to embed; tried " + "; ".join(failures), code="no_3d")
-            embedded = _embed(molecule, rung, settings.candidates, rung_seed, seconds)
+            embedded = _embed(molecule, rung, candidates, rung_seed, seconds)
             if isinstance(embedded, Chem.Mol):
                 return _conformers(embedded, rung, settings)
-            failures.append(f"{rung.label}: {embedded}")
-            if embedded[-1].isdigit():  # counted failures: only a crashed minimiser deserves another seed
+            failures.append(f"{rung.label}: {embedded.reason}")
+            if not embedded.by_chance:
                 break
     raise NotConverged("no three-dimensional structure found: " + "; ".join(failures), code="no_3d")
 
@@ -100,7 +102,26 @@ def read_with_hydrogens(smiles: str) -> Chem.Mol:
     return Chem.AddHs(molecule)
 
 
-def _embed(molecule: Chem.Mol, rung: Rung, candidates: int, seed: int, seconds: int) -> Chem.Mol | str:
+def _least_candidates(molecule: Chem.Mol) -> int:
+    """More than one where the embedding would throw a coin between E and Z: the force field then chooses."""
+    open_bonds = (
+        element
+        for element in Chem.FindPotentialStereo(molecule)
+        if element.type == Chem.StereoType.Bond_Double
+        and element.specified == Chem.StereoSpecified.Unspecified
+    )
+    return CANDIDATES_FOR_UNDRAWN if any(True for _ in open_bonds) else 1
+
+
+@dataclass(frozen=True)
+class Failure:
+    """Why a rung gave nothing; ``by_chance`` when another seed may do better."""
+
+    reason: str
+    by_chance: bool
+
+
+def _embed(molecule: Chem.Mol, rung: Rung, candidates: int, seed: int, seconds: int) -> Chem.Mol | Failure:
     """A copy with conformers, or the reasons why there are none."""
     trial = Chem.Mol(molecule)
     if not rung.keep_stereo:
@@ -108,9 +129,10 @@ def _embed(molecule: Chem.Mol, rung: Rung, candidates: int, seed: int, seconds: 
     parameters = rung.parameters(seed, seconds)
     try:
         rdDistGeom.EmbedMultipleConfs(trial, candidates, parameters)
-    except RuntimeError as error:  # an invariant of the minimiser in some ring systems, seed dependent
-        return str(error).strip().splitlines()[0]
-    return trial if trial.GetNumConformers() else _count_failures(parameters)
+    except RuntimeError as error:  # an invariant of the minimiser in some ring systems
+        return Failure(str(error).strip().splitlines()[0], by_chance=True)
+    # the returned ids are no guide: after a timeout they name conformers that are not there
+    return trial if trial.GetNumConformers() else Failure(_count_failures(parameters), by_chance=False)
 
 
 def _seeds(seed: int) -> Iterator[int]:

@@ -36,7 +36,7 @@ class Relax:
     """Relaxes every conformer it is given and keeps the lowest; see :mod:`.relaxation`."""
 
     name = "relax"
-    version = "1"
+    version = "2"
     needs: tuple[type[Record], ...] = (Identity, Medium, Conformers)
     makes: tuple[type[Record], ...] = (Geometry,)
     Settings: type[Frozen] = RelaxSettings

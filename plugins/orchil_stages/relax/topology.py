@@ -10,6 +10,8 @@ from rdkit.Chem import GetPeriodicTable
 
 FORMED, BROKEN = 1.2, 1.35
 """Times the sum of covalent radii: closer is a bond, farther is none; in between the old state stands."""
+DATIVE_ACCEPTORS, DATIVE_DONORS = (14, 15, 32, 33), (7, 8, 9)
+"""Drawings leave out the fifth and sixth bonds of Si, P, Ge, As: they do not count as formed."""
 
 
 @dataclass(frozen=True)
@@ -35,7 +37,9 @@ def find_changes(numbers: IntArray, bonds: IntArray, positions_angstrom: FloatAr
     distance = np.linalg.norm(positions_angstrom[:, None] - positions_angstrom[None], axis=-1)
     bonded = np.zeros(sums.shape, dtype=bool)
     bonded[bonds[:, 0], bonds[:, 1]] = bonded[bonds[:, 1], bonds[:, 0]] = True
-    changed = np.where(bonded, distance > BROKEN * sums, distance < FORMED * sums)
+    acceptor, donor = np.isin(numbers, DATIVE_ACCEPTORS), np.isin(numbers, DATIVE_DONORS)
+    dative = (acceptor[:, None] & donor[None]) | (donor[:, None] & acceptor[None])
+    changed = np.where(bonded, distance > BROKEN * sums, (distance < FORMED * sums) & ~dative)
     return [
         Change(
             label="-".join(f"{table.GetElementSymbol(int(numbers[k]))}{k + 1}" for k in (i, j)),

@@ -73,9 +73,7 @@ def sample(job: Job, cache: Path) -> Sample | None:
         return None
     window = row.prepared.window
     settings = ExciteSettings()
-    states, _ = solve_states(
-        row.prepared, trained_parameters(), row.medium, row.ground_dipole, settings.states
-    )
+    states, _ = solve_states(row.prepared, trained_parameters(), row.medium, row.ground_dipole, settings.states)
     if states.energies[0] <= 0.2:
         return None
     empty = np.zeros(0)
@@ -106,9 +104,7 @@ def targets(samples: Sequence[Sample]) -> dict[str, FloatArray]:
         "position": column(lambda s: s.measured.energy_ev - s.physics_ev),
         "absorptivity": column(lambda s: s.measured.log10_absorptivity),
         "width": column(lambda s: s.measured.width_cm1 and np.log10(s.measured.width_cm1 * _CM1_EV)),
-        "stokes": column(
-            lambda s: s.measured.emission_nm and s.physics_ev - HC_EV_NM / s.measured.emission_nm
-        ),
+        "stokes": column(lambda s: s.measured.emission_nm and s.physics_ev - HC_EV_NM / s.measured.emission_nm),
     }
 
 

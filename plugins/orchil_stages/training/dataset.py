@@ -69,13 +69,20 @@ def _measurement(row: dict[str, str]) -> Measurement:
         absorption_nm=number("absorption_max_nm"),
         emission_nm=number("emission_max_nm"),
         log10_absorptivity=number("log10_molar_absorptivity"),
-        width_cm1=number("absorption_fwhm_cm1"),
+        width_cm1=_width(number("absorption_fwhm_cm1"), number("absorption_fwhm_nm"), number("absorption_max_nm")),
         lifetime_ns=number("lifetime_ns"),
         quantum_yield=number("quantum_yield"),
         reference=row["reference"],
         fault=fault,
     )
     return made if fault else replace(made, fault=_fault(made))
+
+
+def _width(in_cm1: float | None, in_nm: float | None, position_nm: float | None) -> float | None:
+    """Width in cm^-1; one given in nm is turned at the maximum."""
+    if in_cm1 is None and in_nm is not None and position_nm is not None:
+        return in_nm * 1e7 / position_nm**2
+    return in_cm1
 
 
 def _medium(row: dict[str, str]) -> tuple[str, str | None]:

@@ -64,9 +64,7 @@ def _coulomb(gradient: FloatArray, prepared: Prepared, parameters: Parameters, a
     _kernel(gradient, prepared, parameters, _Kernel("coulomb", scalars, coulomb_kernel), weight)
 
 
-def _exchange(
-    gradient: FloatArray, prepared: Prepared, parameters: Parameters, amplitude: FloatArray
-) -> None:
+def _exchange(gradient: FloatArray, prepared: Prepared, parameters: Parameters, amplitude: FloatArray) -> None:
     charge = np.einsum("Aia,ia->A", prepared.blocks.transition, amplitude)
     scalars = ("exchange_strength", "exchange_exponent")
     _kernel(

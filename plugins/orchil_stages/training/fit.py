@@ -111,10 +111,7 @@ class Shards:
     def __init__(self, jobs: Sequence[Job], cache: Path, window: tuple[int, int], workers: int) -> None:
         numbered = list(enumerate(jobs))
         self._pools = [ProcessPoolExecutor(1, mp_context=get_context("spawn")) for _ in range(workers)]
-        loading = [
-            pool.submit(_load_shard, numbered[w::workers], cache, window)
-            for w, pool in enumerate(self._pools)
-        ]
+        loading = [pool.submit(_load_shard, numbered[w::workers], cache, window) for w, pool in enumerate(self._pools)]
         self.usable = np.zeros(len(jobs), dtype=bool)
         for future in loading:
             self.usable[future.result()] = True
@@ -147,9 +144,7 @@ class Problem:
             (((vector - self.start) / self.widths) ** 2).sum()
         )
 
-    def step(
-        self, energies: FloatArray, jacobian: FloatArray, vector: FloatArray, damping: float
-    ) -> FloatArray:
+    def step(self, energies: FloatArray, jacobian: FloatArray, vector: FloatArray, damping: float) -> FloatArray:
         """The damped Gauss-Newton step."""
         residual = energies - self.targets
         robust = self.weights * np.minimum(1.0, HUBER_EV / np.maximum(np.abs(residual), 1e-9))

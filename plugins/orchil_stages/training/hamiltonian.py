@@ -65,9 +65,7 @@ def fit(chosen: argparse.Namespace) -> None:
         shown = [(f"step {iteration} training", errors(energies[~test], targets[~test]))]
         if test.any():
             shown.append((f"step {iteration} test", errors(energies[test], targets[test])))
-        print(
-            f"objective {objective:.3f} after {time.monotonic() - start:.0f} s\n{render(shown)}", flush=True
-        )
+        print(f"objective {objective:.3f} after {time.monotonic() - start:.0f} s\n{render(shown)}", flush=True)
         write_parameters(Parameters(vector), {"rows": int((~test).sum()), "step": iteration}, chosen.cache)
 
     train(shards.evaluate, problem, _start(chosen.cache).vector, ITERATIONS, report)

@@ -58,7 +58,5 @@ def render(rows: Mapping[str, Errors] | Sequence[tuple[str, Errors]]) -> str:
     """A plain-text table."""
     pairs = rows.items() if isinstance(rows, Mapping) else rows
     lines = [f"{'prediction':<58}{'dyes':>6}{'MAE/eV':>9}{'bias/eV':>9}{'R2':>8}{'Spearman':>10}"]
-    lines += [
-        f"{n:<58}{e.count:>6}{e.mae:>9.3f}{e.bias:>9.3f}{e.r2:>8.3f}{e.spearman:>10.3f}" for n, e in pairs
-    ]
+    lines += [f"{n:<58}{e.count:>6}{e.mae:>9.3f}{e.bias:>9.3f}{e.r2:>8.3f}{e.spearman:>10.3f}" for n, e in pairs]
     return "\n".join(lines)

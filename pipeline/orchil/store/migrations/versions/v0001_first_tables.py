@@ -66,6 +66,9 @@ def _library() -> None:
         sa.Column("charge", sa.Integer),
         sa.Column("extra", JSON, nullable=False),
         sa.Column("smiles", sa.Text),
+        sa.Column(
+            "medium_used", sa.Text, comment="as intake understood it; the brief's where the row names none"
+        ),
         sa.Column("status", sa.Text, nullable=False, index=True),
         sa.Column("failed_stage", sa.Text),
         sa.Column("reason_code", sa.Text),
@@ -223,7 +226,7 @@ def _scores() -> None:
 # query filters on their columns. A candidate that is not done shows no score of an earlier run.
 RANKING = """
 SELECT
-    s.rank, c.name AS candidate, c.smiles, c.medium, c.status,
+    s.rank, c.name AS candidate, c.smiles, coalesce(c.medium_used, c.medium) AS medium, c.status,
     CASE WHEN c.status = 'failed' THEN
         coalesce(c.failed_stage || ': ', '') || coalesce(c.reason_code || ': ', '') || coalesce(c.reason, '')
     END AS reason,
@@ -243,19 +246,23 @@ ORDER BY s.rank IS NULL, s.rank, c.row_number
 
 STATES = """
 SELECT
-    c.name AS candidate, c.medium, t.state, t.energy_ev, t.wavelength_nm, t.oscillator_strength,
+    c.name AS candidate, coalesce(c.medium_used, c.medium) AS medium, t.state,
+    t.energy_ev, t.wavelength_nm, t.oscillator_strength,
     t.dipole_x_debye, t.dipole_y_debye, t.dipole_z_debye, t.long_axis_angle_deg, t.electron_shift_angstrom,
     t.charge_transfer_share, t.overlap, t.pi_share, t."leading"
 FROM transition t JOIN candidate c ON c.id = t.candidate_id
 """
 
 QUANTITIES = """
-SELECT c.name AS candidate, c.medium, q.name AS quantity, q.value, q.low, q.high, q.coverage, q.unit
+SELECT
+    c.name AS candidate, coalesce(c.medium_used, c.medium) AS medium, q.name AS quantity,
+    q.value, q.low, q.high, q.coverage, q.unit
 FROM quantity q JOIN candidate c ON c.id = q.candidate_id
 """
 
 FAILURES = """
-SELECT name AS candidate, row_number, medium, structure, failed_stage, reason_code, reason
+SELECT
+    name AS candidate, row_number, coalesce(medium_used, medium) AS medium, structure, failed_stage, reason_code, reason
 FROM candidate WHERE status = 'failed' ORDER BY row_number
 """
 
