@@ -160,9 +160,7 @@ def _run_twice_if_needed(stage: Stage, inputs: list[Record], settings: Any) -> l
 def _work_name(stage: Stage, settings: str, inputs: Sequence[Record]) -> str:
     versions = json.dumps(dict(stage.found().versions), sort_keys=True)
     digests = [record.digest for record in inputs]
-    return content_digest(stage.name, stage.version, settings, versions, code_digest(stage.name), *digests)[
-        :40
-    ]
+    return content_digest(stage.name, stage.version, settings, versions, code_digest(stage.name), *digests)[:40]
 
 
 @cache

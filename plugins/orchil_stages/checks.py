@@ -53,6 +53,4 @@ def _anthracene() -> CheckResult:
 def _azobenzene() -> CheckResult:
     found = _transitions("c1ccc(/N=N/c2ccccc2)cc1")
     lowest = float(found.oscillator_strength[0])
-    return CheckResult(
-        lowest < 1e-3, f"oscillator strength {lowest:.5f} at {1239.84 / found.energy_ev[0]:.0f} nm"
-    )
+    return CheckResult(lowest < 1e-3, f"oscillator strength {lowest:.5f} at {1239.84 / found.energy_ev[0]:.0f} nm")

@@ -12,9 +12,7 @@ def availability(*distributions: str) -> Availability:
     found = {name: _version(name) for name in distributions}
     missing = [name for name, number in found.items() if not number]
     versions = {name: number for name, number in found.items() if number}
-    return Availability(
-        ok=not missing, versions=versions, hint="; ".join(f"pip install {m}" for m in missing)
-    )
+    return Availability(ok=not missing, versions=versions, hint="; ".join(f"pip install {m}" for m in missing))
 
 
 def _version(distribution: str) -> str:

@@ -58,9 +58,7 @@ def main() -> None:
         print(f"  {stage:<10}{seconds / len(dyes):8.3f} CPU-s per dye{seconds / one.chemistry:8.1%}")
     print(f"  {'chain':<10}{one.chemistry / len(dyes):8.3f} CPU-s per dye")
     overhead = one.cpu - start_up[0].cpu - (one.chemistry - start_up[0].chemistry)
-    print(
-        f"not chemistry: {overhead / one.chemistry:.1%} of the chemistry, besides {start_up[0].cpu:.1f} CPU-s of start-up"
-    )
+    print(f"not chemistry: {overhead / one.chemistry:.1%} of it; start-up {start_up[0].cpu:.1f} CPU-s apart")
     gain = (one.wall - start_up[0].wall) / (two.wall - start_up[1].wall)
     print(f"two workers are {gain:.2f} times as fast as one (start-up apart)")
 

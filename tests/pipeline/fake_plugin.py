@@ -56,9 +56,7 @@ class Brew(Record):
 
     def quantities(self) -> tuple[Quantity, ...]:
         return (
-            Quantity(
-                name="strength", value=self.strength, unit="nm", low=self.strength - 1, high=self.strength + 1
-            ),
+            Quantity(name="strength", value=self.strength, unit="nm", low=self.strength - 1, high=self.strength + 1),
         )
 
 

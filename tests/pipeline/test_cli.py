@@ -39,9 +39,7 @@ def screened(orchil, night):
     ]
     (night.folder / "list.csv").write_text("\n".join(lines) + "\n")
     (night.folder / "brief.toml").write_text(BRIEF)
-    code, out, err = orchil(
-        "screen", "list.csv", "--brief", "brief.toml", "--store", "s.db", "--workers", "1"
-    )
+    code, out, err = orchil("screen", "list.csv", "--brief", "brief.toml", "--store", "s.db", "--workers", "1")
     assert code == 0, err
     return out.decode(), err
 

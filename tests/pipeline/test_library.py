@@ -125,9 +125,7 @@ def test_smi(tmp_path):
 
 
 # Layout of a mol block and of data items as in the CTfile formats document (BIOVIA, 2020), from memory.
-MOLBLOCK = (
-    "methane\n  made by hand\n\n  1  0  0  0  0  0  0  0  0  0999 V2000\n    0.0 0.0 0.0 C   0  0\nM  END\n"
-)
+MOLBLOCK = "methane\n  made by hand\n\n  1  0  0  0  0  0  0  0  0  0999 V2000\n    0.0 0.0 0.0 C   0  0\nM  END\n"
 
 
 def test_sdf(tmp_path):

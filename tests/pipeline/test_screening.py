@@ -117,8 +117,7 @@ def test_seed_depends_on_the_inputs_alone(night):
     night.run("alpha", "shy-one")
     night.run("alpha", "shy-one", brief=BRIEF + "[stage.brew]\nscale = 3\n")
     seeds = night.query(
-        "SELECT json_extract(payload, '$.seed') AS seed, count(*) AS n FROM record "
-        "WHERE kind = 'brew' GROUP BY 1"
+        "SELECT json_extract(payload, '$.seed') AS seed, count(*) AS n FROM record WHERE kind = 'brew' GROUP BY 1"
     )
     assert [row["n"] for row in seeds] == [2, 2]
     assert all(0 < row["seed"] < 2**31 for row in seeds)
@@ -190,9 +189,7 @@ def begin(night, *more: str) -> subprocess.Popen[bytes]:
     (night.folder / "brief.toml").write_text(BRIEF)
     files = [str(night.folder / "words.csv"), "--brief", str(night.folder / "brief.toml")]
     arguments = ["screen", *files, "--store", str(night.store), "--workers", "2", *more]
-    return subprocess.Popen(
-        [sys.executable, "-c", COMMAND, *arguments], stderr=subprocess.PIPE, stdout=subprocess.PIPE
-    )
+    return subprocess.Popen([sys.executable, "-c", COMMAND, *arguments], stderr=subprocess.PIPE, stdout=subprocess.PIPE)
 
 
 def wait_for_runs(night, process, count: int) -> None:

@@ -41,9 +41,7 @@ def angle_deg(vector: FloatArray, direction: FloatArray) -> float:
 
 def find_state(transitions: Transitions, row: dict[str, Any], direction: FloatArray) -> int:
     """The state a row means, by energy, character and polarisation; never by its number alone."""
-    inside = (transitions.energy_ev >= row["energy_low_ev"]) & (
-        transitions.energy_ev <= row["energy_high_ev"]
-    )
+    inside = (transitions.energy_ev >= row["energy_low_ev"]) & (transitions.energy_ev <= row["energy_high_ev"])
     states = np.flatnonzero(inside & (transitions.pi_share >= PI_TO_PI_STAR))
     assert states.size, f"no pi-pi* state of {row['name']} within the window: {transitions.energy_ev}"
     if row["how_to_find"].startswith("strongest"):

@@ -31,9 +31,7 @@ LEAST_COVERED = 0.80
 LEAST_SOLVENT_SHIFT_NM = 2.0
 
 
-def _bands(
-    predict_many: PredictMany, members: list[dict[str, Any]], quantity: str = "absorption_max_nm"
-) -> FloatArray:
+def _bands(predict_many: PredictMany, members: list[dict[str, Any]], quantity: str = "absorption_max_nm") -> FloatArray:
     found = predict_many((member["smiles"], member["medium"]) for member in members)
     return np.array([getattr(prediction.band, quantity) for prediction in found])
 
@@ -81,9 +79,7 @@ def test_azo_dyes_redden_with_donor_and_acceptor(predict_many: PredictMany) -> N
 
 def test_streptocyanines_gain_about_100_nm_per_vinylene(predict_many: PredictMany) -> None:
     """Malhotra and Whiting, J. Chem. Soc. 1960, 3812 (from memory, high): 312, 416, 519, 625, 735 nm."""
-    found = _bands(
-        predict_many, series("cyanines", "maximum").to_dict("records"), "strongest_absorption_max_nm"
-    )
+    found = _bands(predict_many, series("cyanines", "maximum").to_dict("records"), "strongest_absorption_max_nm")
     steps = np.diff(found)
     low, high = VINYLENE_SHIFT_NM
     assert ((steps > low) & (steps < high)).all(), steps
@@ -123,12 +119,8 @@ def test_cyanines_do_not_converge_where_polyenes_do(predict_many: PredictMany) -
     """Textbook: the last vinylene of a cyanine shifts the band further (nm) than that of a polyene of its
     length.
     """
-    cyanines = _bands(
-        predict_many, series("cyanines", "maximum").to_dict("records"), "strongest_absorption_max_nm"
-    )
-    polyenes = _bands(
-        predict_many, series("polyenes", "0-0 of 1Bu").to_dict("records"), "strongest_absorption_max_nm"
-    )
+    cyanines = _bands(predict_many, series("cyanines", "maximum").to_dict("records"), "strongest_absorption_max_nm")
+    polyenes = _bands(predict_many, series("polyenes", "0-0 of 1Bu").to_dict("records"), "strongest_absorption_max_nm")
     assert cyanines[-1] - cyanines[-2] > 1.5 * (polyenes[-1] - polyenes[-2])
 
 
@@ -137,9 +129,7 @@ def test_la_band_of_acenes_falls_with_every_ring(predict: Predict) -> None:
     axis.
     """
     members = series("acenes", "vertical La")
-    found = np.array(
-        [_lowest_across(predict(smiles, "gas phase").transitions) for smiles in members["smiles"]]
-    )
+    found = np.array([_lowest_across(predict(smiles, "gas phase").transitions) for smiles in members["smiles"]])
     assert (np.diff(found) < 0).all(), found
     assert np.abs(found - HC_EV_NM / members["absorption_max_nm"]).mean() < LARGEST_ACENE_MAE_EV
 
@@ -158,9 +148,7 @@ def _lowest_across(transitions: Any) -> float:
         ("4-aminophthalimide", "diethyl ether", "water"),
     ],
 )
-def test_push_pull_dyes_redden_in_polar_media(
-    name: str, apolar: str, polar: str, predict_many: PredictMany
-) -> None:
+def test_push_pull_dyes_redden_in_polar_media(name: str, apolar: str, polar: str, predict_many: PredictMany) -> None:
     """Measured: coumarin 153 393 to 421, Nile red 508 to 549, 4-aminophthalimide 350 to 370 nm (papers in
     the rows).
     """

@@ -58,9 +58,7 @@ def test_in_plane_transitions_fall_on_two_axes_at_right_angles(row: dict[str, An
     """
     found = predict(row["smiles"], "gas phase")
     axes = inertia_axes(found.geometry)[:2]
-    states = np.flatnonzero(
-        (found.transitions.oscillator_strength > 0.02) & (found.transitions.pi_share > 0.85)
-    )
+    states = np.flatnonzero((found.transitions.oscillator_strength > 0.02) & (found.transitions.pi_share > 0.85))
     dipoles = found.transitions.transition_dipole_debye[states]
     nearest = {int(np.argmin([angle_deg(dipole, direction) for direction in axes])) for dipole in dipoles}
     assert nearest == {0, 1}

@@ -60,17 +60,6 @@ def test_two_programs_hold_the_same_solvents(solvation: str) -> None:
 
 
 @pytest.mark.parametrize("engine", ENGINES)
-def test_bond_orders_of_water(engine: str) -> None:
-    """Wiberg indices (Tetrahedron 24, 1083, 1968): near 1 for O-H, 0 for H...H, nothing on the diagonal."""
-    state, _ = _state("water", None, engine)
-    orders = state.bond_orders()
-    assert orders.shape == (3, 3)
-    assert orders[0, 1:] == pytest.approx([0.92, 0.92], abs=0.05)
-    assert orders[1, 2] == pytest.approx(0, abs=0.05)
-    assert np.diag(orders) == pytest.approx(0)
-
-
-@pytest.mark.parametrize("engine", ENGINES)
 @pytest.mark.parametrize(
     ("name", "solvation"),
     [("dimethyl sulfone", None), ("thiophene", "toluene"), ("iodoethene", None), ("4-nitrophenolate", "h2o")],

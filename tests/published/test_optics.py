@@ -322,9 +322,7 @@ def test_overlap_behind_a_published_radius() -> None:
     yield 1.
     """
     assert transfer.overlap_for_radius(6.7, 1.0, 1.4) == pytest.approx(5.9e15, rel=0.01)
-    assert transfer.forster_radius_nm(transfer.overlap_for_radius(6.7, 1.0, 1.4), 1.0, 1.4) == pytest.approx(
-        6.7
-    )
+    assert transfer.forster_radius_nm(transfer.overlap_for_radius(6.7, 1.0, 1.4), 1.0, 1.4) == pytest.approx(6.7)
 
 
 def test_orientation_factor_limits() -> None:

@@ -80,9 +80,7 @@ def test_a_missing_basis_function_is_caught() -> None:
     wave = _wave(molecule)
     ints = integrals(molecule.numbers, molecule.positions)
     with pytest.raises(BadResult, match="basis functions rebuilt"):
-        check_integrals(
-            molecule.numbers, molecule.positions, replace(wave, coefficients=wave.coefficients[:-1]), ints
-        )
+        check_integrals(molecule.numbers, molecule.positions, replace(wave, coefficients=wave.coefficients[:-1]), ints)
 
 
 def test_valence_charges_are_those_of_the_main_groups() -> None:

@@ -25,9 +25,7 @@ QUANTILE = {"0.5": 0.7, "0.8": 1.3, "0.9": 1.6, "0.95": 2.0}
 ENERGY = NAMES.index("energy")
 
 
-def _model(
-    intercept: float, slope: float = 0.0, size: float = 0.1, size_slope: float = 0.0
-) -> dict[str, Any]:
+def _model(intercept: float, slope: float = 0.0, size: float = 0.1, size_slope: float = 0.0) -> dict[str, Any]:
     """A model that sees the energy only: centre 3 eV, scale 0.5 eV."""
     only = np.eye(len(NAMES))[ENERGY]
     return {
@@ -104,9 +102,7 @@ def _band(
 
 
 def test_value_is_a_line_in_the_standardised_features() -> None:
-    assert float(_calibration().position.predict(_features(4.0))) == pytest.approx(
-        -0.1 + 0.2 * (4.0 - 3.0) / 0.5
-    )
+    assert float(_calibration().position.predict(_features(4.0))) == pytest.approx(-0.1 + 0.2 * (4.0 - 3.0) / 0.5)
 
 
 def test_a_line_does_not_run_away() -> None:
@@ -139,15 +135,11 @@ def test_intervals_are_nested() -> None:
 def test_a_coverage_that_was_not_trained_is_refused() -> None:
     with pytest.raises(KeyError):
         _calibration().position.interval(_features(3.0), 0.7)
-    with pytest.raises(
-        ValidationError, match=r"0\.7 is not calibrated; choose one of 0\.5, 0\.8, 0\.9, 0\.95"
-    ):
+    with pytest.raises(ValidationError, match=r"0\.7 is not calibrated; choose one of 0\.5, 0\.8, 0\.9, 0\.95"):
         Calibrate().Settings(coverage=0.7)
 
 
-@pytest.mark.parametrize(
-    ("energy", "trust"), [(3.4, "inside"), (3.8, "edge"), (2.2, "edge"), (4.1, "outside")]
-)
+@pytest.mark.parametrize(("energy", "trust"), [(3.4, "inside"), (3.8, "edge"), (2.2, "edge"), (4.1, "outside")])
 def test_trust_by_distance(energy: float, trust: str) -> None:
     """Mahalanobis distance over one feature: 0.8, 1.6, 1.6, 2.2 against edges at 1 and 2."""
     assert _calibration().trust(_features(energy)) == trust
@@ -208,9 +200,7 @@ def test_band_from_physics_and_correction(monkeypatch: pytest.MonkeyPatch) -> No
 
 @pytest.mark.parametrize("coverage", COVERAGES)
 @pytest.mark.parametrize("energy", [1.2, 2.0, 3.0, 4.5])
-def test_values_lie_inside_their_intervals(
-    energy: float, coverage: float, monkeypatch: pytest.MonkeyPatch
-) -> None:
+def test_values_lie_inside_their_intervals(energy: float, coverage: float, monkeypatch: pytest.MonkeyPatch) -> None:
     band = _band(monkeypatch, _transitions([energy, energy + 0.3], [0.5, 0.1]), coverage=coverage)
     assert band.coverage == coverage
     assert band.absorption_low_nm < band.absorption_max_nm < band.absorption_high_nm
@@ -270,9 +260,7 @@ def test_the_shipped_calibration_is_whole() -> None:
     """Every model has every coverage, nested intervals, and one number for each feature."""
     shipped = trained_calibration()
     for model in (shipped.position, shipped.absorptivity, shipped.width, shipped.stokes):
-        assert {len(row) for row in (model.centre, model.scale, model.slope, model.size_slope)} == {
-            len(NAMES)
-        }
+        assert {len(row) for row in (model.centre, model.scale, model.slope, model.size_slope)} == {len(NAMES)}
         assert (model.scale > 0).all()
         edges = np.array([model.interval(model.centre, coverage) for coverage in COVERAGES])
         assert (np.diff(edges[:, 0]) < 0).all()

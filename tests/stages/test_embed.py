@@ -79,9 +79,7 @@ def test_selenophene_has_no_force_field_and_still_a_structure() -> None:
     assert length("c1cc[se]c1", "[#6]~[Se]", made) == pytest.approx(1.855, abs=0.15)
 
 
-@pytest.mark.parametrize(
-    "smiles", ["C/C=C/c1ccccc1", "C/C=C\\c1ccccc1", "C[C@H](N)C(=O)O", "C[C@@H](N)C(=O)O"]
-)
+@pytest.mark.parametrize("smiles", ["C/C=C/c1ccccc1", "C/C=C\\c1ccccc1", "C[C@H](N)C(=O)O", "C[C@@H](N)C(=O)O"])
 def test_drawn_stereo_is_kept(smiles: str) -> None:
     made = embed_structures(smiles, PLAIN, seed=3)
     molecule = molecule_of(smiles, made)

@@ -142,9 +142,7 @@ def test_more_states_leave_the_lower_ones_alone(run: Run, predictor: Predictor) 
 
 
 @pytest.mark.parametrize(("smiles", "occupied", "virtual", "states"), [("O", 4, 2, 8), ("C=O", 6, 4, 12)])
-def test_small_molecules_have_small_windows(
-    smiles: str, occupied: int, virtual: int, states: int, run: Run
-) -> None:
+def test_small_molecules_have_small_windows(smiles: str, occupied: int, virtual: int, states: int, run: Run) -> None:
     """Water: 4 valence pairs in 6 functions, so 8 single excitations; formaldehyde: 6 pairs in 10."""
     orbitals, found = run(_geometry(_embedded(smiles)))
     assert (orbitals.occupied_window, orbitals.virtual_window) == (occupied, virtual)
@@ -222,9 +220,7 @@ def test_energies_are_smooth_along_a_torsion(run: Run) -> None:
 
     Measured: planar fluorene at 302 nm, twisted biphenyl at 247 nm (from memory, high).
     """
-    found = np.array(
-        [run(place)[1].energy_ev[:6] for place in _twisted("c1ccc(cc1)-c1ccccc1", range(20, 100, 10))]
-    )
+    found = np.array([run(place)[1].energy_ev[:6] for place in _twisted("c1ccc(cc1)-c1ccccc1", range(20, 100, 10))])
     assert np.abs(np.diff(found, axis=0)).max() < 0.2
     assert (np.diff(found[:, 0]) > 0).all()
 

@@ -20,9 +20,7 @@ from orchil_stages.intake.azo import LISTED_AMINES
 from rdkit import Chem
 from rdkit.Chem import AllChem
 
-RHODAMINE_101 = (
-    "C1CC2=CC3=C(C4=C2N(C1)CCC4)OC5=C6CCC[N+]7=C6C(=CC5=C3C8=CC=CC=C8C(=O)[O-])CCC7"  # drawn inner salt
-)
+RHODAMINE_101 = "C1CC2=CC3=C(C4=C2N(C1)CCC4)OC5=C6CCC[N+]7=C6C(=CC5=C3C8=CC=CC=C8C(=O)[O-])CCC7"  # drawn inner salt
 BODIPY_493 = "CC1=CC(C)=[N+]2C1=C(C)c1c(C)cc(C)n1[B-]2(F)F"
 
 
@@ -32,9 +30,7 @@ def take(tmp_path):
 
     def run(structure, **row):
         settings = stage.Settings(**row.pop("settings", {}))
-        made = list(
-            stage.run(Inputs([LibraryRow(structure=structure, **row)]), settings, Context(tmp_path, 1))
-        )
+        made = list(stage.run(Inputs([LibraryRow(structure=structure, **row)]), settings, Context(tmp_path, 1)))
         assert [type(record) for record in made] == [Identity, IntakeNotes, Medium]
         return made
 
@@ -231,9 +227,7 @@ def test_size_limit_says_how_to_raise_it(take):
     assert take("C" * 300, settings={"max_heavy_atoms": 300})[0].heavy_atoms == 300
 
 
-@pytest.mark.parametrize(
-    "smiles", ["c1cc[te]c1", "C[Ge](C)(C)C", "c1cc[se]c1", "CB(O)O", "C[Si](C)(C)C", "Ic1ccccc1"]
-)
+@pytest.mark.parametrize("smiles", ["c1cc[te]c1", "C[Ge](C)(C)C", "c1cc[se]c1", "CB(O)O", "C[Si](C)(C)C", "Ic1ccccc1"])
 def test_main_group_elements_are_handled(take, smiles):
     assert take(smiles)[0].charge == 0
 

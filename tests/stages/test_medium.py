@@ -69,9 +69,7 @@ def test_constants_agree_with_an_independent_copy_of_the_descriptor_database():
         row = table.get(other_names.get(medium.name, medium.name))
         if row is not None:
             compared += 1
-            assert (medium.refractive_index, medium.dielectric_constant) == pytest.approx((row[0], row[5])), (
-                medium.name
-            )
+            assert (medium.refractive_index, medium.dielectric_constant) == pytest.approx((row[0], row[5])), medium.name
             assert medium.hydrogen_bond_donor == (row[2] >= 0.3), medium.name
     assert compared >= 60
 
@@ -80,9 +78,7 @@ def test_table_is_large_and_its_names_and_smiles_are_unique():
     media = known_media()
     assert len(media) >= 45
     assert len({medium.name for medium in media}) == len(media)
-    assert {medium.solvation for medium in media if not medium.solvation_stand_in} - {None} == set(
-        SOLVATION_SETS
-    )
+    assert {medium.solvation for medium in media if not medium.solvation_stand_in} - {None} == set(SOLVATION_SETS)
     assert set(PARAMETER_SETS) == set(SOLVATION_SETS)
 
 
@@ -159,9 +155,7 @@ def test_film_by_two_constants(text):
     assert film.solvation is not None and film.solvation_stand_in
 
 
-@pytest.mark.parametrize(
-    "text", ["film(3, 1.6)", "film(eps=-3, n=1.6)", "film(eps=3, n=0.5)", "film(eps=3)", "film()"]
-)
+@pytest.mark.parametrize("text", ["film(3, 1.6)", "film(eps=-3, n=1.6)", "film(eps=3, n=0.5)", "film(eps=3)", "film()"])
 def test_a_film_written_wrongly_says_how_it_is_written(text):
     with pytest.raises(BadInput, match=r"film\(eps=3.0, n=1.6\)"):
         lookup(text)

@@ -66,9 +66,7 @@ def test_without_interval_a_linear_desirability_with_a_soft_edge():
     """Derringer and Suich (1980) with exponent 1; the edge is 5 % of the window, or of an only limit."""
     got = probabilities(column([500, 560, 561.5, 563, 450]), Want(quantity="q", between=(500, 560)))
     assert got == pytest.approx([1, 1, 0.5, FLOOR, FLOOR])
-    assert probabilities(column([15, 15.375, 20]), Want(quantity="q", at_most=15)) == pytest.approx(
-        [1, 0.5, FLOOR]
-    )
+    assert probabilities(column([15, 15.375, 20]), Want(quantity="q", at_most=15)) == pytest.approx([1, 0.5, FLOOR])
     assert probabilities(column([0, -1]), Want(quantity="q", at_least=0)) == pytest.approx([1, FLOOR])
 
 
@@ -125,9 +123,7 @@ def brute_force_fronts(points):
     while left:
         number += 1
         front = {
-            i
-            for i in left
-            if not any((points[j] >= points[i]).all() and (points[j] > points[i]).any() for j in left)
+            i for i in left if not any((points[j] >= points[i]).all() and (points[j] > points[i]).any() for j in left)
         }
         fronts[list(front)] = number
         left -= front
@@ -163,10 +159,7 @@ def test_picks_are_diverse_and_go_down_the_ranking():
 
 
 def test_the_same_molecule_in_two_media_is_picked_once():
-    picks = [
-        r.pick
-        for _, r in scored(table({"a": column([5, 5])}, ["CCO", "OCC"]), [{"quantity": "a", "at_most": 9}])
-    ]
+    picks = [r.pick for _, r in scored(table({"a": column([5, 5])}, ["CCO", "OCC"]), [{"quantity": "a", "at_most": 9}])]
     assert picks == [1, None]
 
 
@@ -185,9 +178,7 @@ def test_a_hundred_thousand_candidates_are_ranked_within_a_second_of_cpu():
     n = 100_000
     rng = np.random.default_rng(1)
     values = rng.uniform(400, 700, size=(5, n))
-    data = {
-        str(k): column(v, v - rng.uniform(5, 40, n), v + rng.uniform(5, 40, n)) for k, v in enumerate(values)
-    }
+    data = {str(k): column(v, v - rng.uniform(5, 40, n), v + rng.uniform(5, 40, n)) for k, v in enumerate(values)}
     wants = [Want(quantity=name, between=(500, 560)) for name in data]
     library = table(data, [""] * n)
     seconds = []

@@ -38,9 +38,7 @@ def _table(folder: Path, *rows: tuple[str, str, str, str]) -> Path:
         ((NAPHTHALENE, "c1ccc(-c2ccc(-c3ccccc3)cc2)cc1", "320", ""), "not in the table"),
     ],
 )
-def test_known_faults_are_kept_apart_with_a_reason(
-    tmp_path: Path, row: tuple[str, str, str, str], said: str
-) -> None:
+def test_known_faults_are_kept_apart_with_a_reason(tmp_path: Path, row: tuple[str, str, str, str], said: str) -> None:
     (read,) = read_measured(_table(tmp_path, row))
     assert read.fault is not None
     assert said in read.fault

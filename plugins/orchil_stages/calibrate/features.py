@@ -36,9 +36,7 @@ NAMES = (
 """Names of the features in their order."""
 
 
-def band_features(
-    identity: Identity, medium: Medium, orbitals: Orbitals, transitions: Transitions
-) -> FloatArray:
+def band_features(identity: Identity, medium: Medium, orbitals: Orbitals, transitions: Transitions) -> FloatArray:
     """Feature vector (len(NAMES),) of the first bright state."""
     energies, strengths = transitions.energy_ev, transitions.oscillator_strength
     state = first_bright(energies, strengths)

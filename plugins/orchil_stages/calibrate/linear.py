@@ -82,9 +82,7 @@ def load_calibration(text: str) -> Calibration:
     given = json.loads(text)
     models = {name: _model(given[name]) for name in ("position", "absorptivity", "width", "stokes")}
     inner, outer = given["distance_edges"]
-    return Calibration(
-        **models, feature_inverse=np.array(given["feature_inverse"]), distance_edges=(inner, outer)
-    )
+    return Calibration(**models, feature_inverse=np.array(given["feature_inverse"]), distance_edges=(inner, outer))
 
 
 def _model(given: dict[str, Any]) -> LinearModel:

@@ -70,9 +70,7 @@ _SHORTEST_EV, _LONGEST_EV = 7.0, 0.3
 """Energies outside are held at the limit: 180 nm to 4 micrometres."""
 
 
-def _band(
-    features: FloatArray, identity: Identity, medium: Medium, transitions: Transitions, coverage: float
-) -> Band:
+def _band(features: FloatArray, identity: Identity, medium: Medium, transitions: Transitions, coverage: float) -> Band:
     from orchil_stages.excite.bright import first_bright, strongest_state
 
     from .linear import trained_calibration
@@ -97,7 +95,7 @@ def _band(
         absorption_low_nm=_nm(physics + high),
         absorption_high_nm=_nm(physics + low),
         physics_absorption_max_nm=_nm(physics),
-        strongest_absorption_max_nm=position if strongest == state else _nm(float(energies[strongest])),
+        strongest_absorption_max_nm=_nm(float(energies[strongest]) + correction),
         molar_absorptivity=10.0 ** float(models.absorptivity.predict(features)),
         molar_absorptivity_low=10.0**epsilon_low,
         molar_absorptivity_high=10.0**epsilon_high,

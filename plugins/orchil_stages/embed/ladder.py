@@ -69,9 +69,7 @@ LADDER = (
 )
 
 
-def embed_structures(
-    smiles: str, settings: EmbedSettings, *, seed: int, deadline: float = np.inf
-) -> Conformers:
+def embed_structures(smiles: str, settings: EmbedSettings, *, seed: int, deadline: float = np.inf) -> Conformers:
     """Embed, clean with a force field and rank; the atom order is that of the SMILES, hydrogens last.
 
     ``deadline`` is a ``time.monotonic`` value. Raises ``BadInput`` for a SMILES that does not parse and
@@ -107,8 +105,7 @@ def _least_candidates(molecule: Chem.Mol) -> int:
     open_bonds = (
         element
         for element in Chem.FindPotentialStereo(molecule)
-        if element.type == Chem.StereoType.Bond_Double
-        and element.specified == Chem.StereoSpecified.Unspecified
+        if element.type == Chem.StereoType.Bond_Double and element.specified == Chem.StereoSpecified.Unspecified
     )
     return CANDIDATES_FOR_UNDRAWN if any(True for _ in open_bonds) else 1
 
@@ -146,10 +143,7 @@ def _count_failures(parameters: Any) -> str:
     counts = list(parameters.GetFailureCounts())
     causes = sorted(rdDistGeom.EmbedFailureCauses.values.items())
     named = [(counts[i], str(cause).lower().replace("_", " ")) for i, cause in causes if i < len(counts)]
-    return (
-        ", ".join(f"{name} {count}" for count, name in sorted(named, reverse=True) if count)
-        or "no reason given"
-    )
+    return ", ".join(f"{name} {count}" for count, name in sorted(named, reverse=True) if count) or "no reason given"
 
 
 def _conformers(molecule: Chem.Mol, rung: Rung, settings: EmbedSettings) -> Conformers:

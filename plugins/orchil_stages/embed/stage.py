@@ -27,9 +27,7 @@ class EmbedSettings(Frozen):
     @model_validator(mode="after")
     def _enough_candidates(self) -> Self:
         if self.candidates is not None and self.candidates < self.conformers:
-            raise ValueError(
-                f"candidates = {self.candidates} is less than conformers = {self.conformers}; raise it"
-            )
+            raise ValueError(f"candidates = {self.candidates} is less than conformers = {self.conformers}; raise it")
         return self
 
 

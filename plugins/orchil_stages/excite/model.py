@@ -34,7 +34,7 @@ def open_states(geometry: Geometry, medium: Medium, occupied: int, virtual: int)
     """Converge the ground state at a geometry and open the window (NotConverged, BadResult)."""
     positions = np.asarray(geometry.positions_angstrom) / BOHR_ANGSTROM
     numbers = np.asarray(geometry.atomic_numbers)
-    ground = open_ground_state(numbers, geometry.charge, medium.solvation, accuracy=0.2)
+    ground = open_ground_state(numbers, geometry.charge, medium.solvation)
     evaluation = ground.evaluate(positions)
     wave = ground.wavefunction()
     check_result(evaluation, wave.charges, geometry.charge)

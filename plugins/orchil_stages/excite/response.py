@@ -78,9 +78,9 @@ def hamiltonian(prepared: Prepared, parameters: Parameters) -> FloatArray:
     levels = corrected_levels(window, prepared.features, parameters)
     coulomb = coulomb_kernel(window.numbers, prepared.distance, parameters)
     exchange = exchange_kernel(window.numbers, prepared.distance, parameters)
-    return assemble(levels.occupied, levels.virtual, blocks, coulomb, 2.0 * exchange) + parameters[
-        "constant"
-    ] * np.eye(o * v)
+    return assemble(levels.occupied, levels.virtual, blocks, coulomb, 2.0 * exchange) + parameters["constant"] * np.eye(
+        o * v
+    )
 
 
 def assemble(
@@ -107,9 +107,7 @@ def solve(matrix: FloatArray, window: Window, states: int) -> States:
     """Lowest states of A; NotConverged when the eigenvalue search fails."""
     count = min(states, len(matrix))
     try:
-        energies, vectors = scipy.linalg.eigh(
-            matrix, subset_by_index=(0, count - 1), driver="evr", check_finite=False
-        )
+        energies, vectors = scipy.linalg.eigh(matrix, subset_by_index=(0, count - 1), driver="evr", check_finite=False)
     except np.linalg.LinAlgError as error:
         raise NotConverged(f"eigenvalues of the response Hamiltonian: {error}") from None
     amplitudes = np.ascontiguousarray(vectors.T).reshape(count, window.occupied, window.virtual)

@@ -63,8 +63,7 @@ class Excite:
         states, _ = solve_states(prepared, trained_parameters(), medium, opened.wave.dipole, settings.states)
         if states.energies[0] <= _LOWEST_EV:
             raise BadResult(
-                f"the first excited state lies at {states.energies[0]:.2f} eV: "
-                "no sound closed-shell ground state"
+                f"the first excited state lies at {states.energies[0]:.2f} eV: no sound closed-shell ground state"
             )
         return orbitals_record(opened), transitions_record(states, opened.window)
 

@@ -64,31 +64,23 @@ class Assertions:
     dipole_error: float
 
 
-def check_integrals(
-    numbers: IntArray, positions: FloatArray, wave: Wavefunction, ints: Integrals
-) -> Assertions:
+def check_integrals(numbers: IntArray, positions: FloatArray, wave: Wavefunction, ints: Integrals) -> Assertions:
     """Assert that the rebuilt basis is the engine's: orthonormal orbitals and the same dipole (BadResult if
     not).
     """
     c = wave.coefficients
     if c.shape[0] != ints.overlap.shape[0]:
-        raise BadResult(
-            f"{c.shape[0]} orbitals from the engine, {ints.overlap.shape[0]} basis functions rebuilt"
-        )
+        raise BadResult(f"{c.shape[0]} orbitals from the engine, {ints.overlap.shape[0]} basis functions rebuilt")
     overlap_error = float(np.abs(c.T @ ints.overlap @ c - np.eye(c.shape[1])).max())
     dipole_error = float(np.abs(molecular_dipole(numbers, positions, wave, ints) - wave.dipole).max())
     if overlap_error > OVERLAP_TOLERANCE:
-        raise BadResult(
-            f"orbitals are not orthonormal in the rebuilt basis (largest error {overlap_error:.1e})"
-        )
+        raise BadResult(f"orbitals are not orthonormal in the rebuilt basis (largest error {overlap_error:.1e})")
     if dipole_error > DIPOLE_TOLERANCE:
         raise BadResult(f"the rebuilt dipole differs by {dipole_error:.1e} e bohr from that of GFN2-xTB")
     return Assertions(overlap_error, dipole_error)
 
 
-def molecular_dipole(
-    numbers: IntArray, positions: FloatArray, wave: Wavefunction, ints: Integrals
-) -> FloatArray:
+def molecular_dipole(numbers: IntArray, positions: FloatArray, wave: Wavefunction, ints: Integrals) -> FloatArray:
     """Dipole (e bohr) from the density in the rebuilt basis and the valence charges of the nuclei."""
     density = (wave.coefficients * wave.occupations) @ wave.coefficients.T
     electronic = -np.einsum("xij,ij->x", ints.position, density)
@@ -164,9 +156,7 @@ def _hopping(numbers: IntArray, where: BasisMap, fock: FloatArray, loewdin: Floa
     blocks = []
     for one, other in HOPPING_CLASSES:
         rows, columns = np.flatnonzero(element == one), np.flatnonzero(element == other)
-        coupling = np.where(
-            where.atom[rows][:, None] == where.atom[columns], 0.0, fock[np.ix_(rows, columns)]
-        )
+        coupling = np.where(where.atom[rows][:, None] == where.atom[columns], 0.0, fock[np.ix_(rows, columns)])
         half = loewdin[rows].T @ coupling @ loewdin[columns]
         blocks.append(half if one == other else half + half.T)
     return np.array(blocks)

@@ -87,9 +87,7 @@ def check_result(evaluation: Evaluation, charges: FloatArray, charge: int) -> No
     if not (np.isfinite(evaluation.energy) and np.isfinite(evaluation.gradient).all()):
         raise BadResult("GFN2-xTB returned an energy or gradient that is not a number")
     if abs(float(charges.sum()) - charge) > 1e-3 or float(np.abs(charges).max()) > 3.5:
-        raise BadResult(
-            f"GFN2-xTB returned impossible atomic charges (sum {charges.sum():.3f}, expected {charge})"
-        )
+        raise BadResult(f"GFN2-xTB returned impossible atomic charges (sum {charges.sum():.3f}, expected {charge})")
 
 
 def _opener(engine: str | None) -> Opener:

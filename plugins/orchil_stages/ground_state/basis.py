@@ -85,9 +85,7 @@ def _molecule(numbers: IntArray, positions_bohr: FloatArray) -> Any:
     from pyscf import gto
 
     molecule = gto.Mole()
-    molecule.atom = [
-        (int(number), tuple(place)) for number, place in zip(numbers, positions_bohr, strict=True)
-    ]
+    molecule.atom = [(int(number), tuple(place)) for number, place in zip(numbers, positions_bohr, strict=True)]
     molecule.unit = "Bohr"
     molecule.basis = {_symbol(number): _gaussians(number) for number in {int(n) for n in numbers}}
     molecule.cart = False
@@ -123,9 +121,7 @@ def _rows(name: str) -> list[dict[str, str]]:
 def _shell_table() -> dict[int, tuple[Shell, ...]]:
     table: dict[int, list[Shell]] = {}
     for row in _rows("gfn2_shells.csv"):
-        shell = Shell(
-            row["shell"], float(row["slater_exponent"]), int(row["gaussians"]), float(row["hardness"])
-        )
+        shell = Shell(row["shell"], float(row["slater_exponent"]), int(row["gaussians"]), float(row["hardness"]))
         table.setdefault(int(row["atomic_number"]), []).append(shell)
     return {number: tuple(found) for number, found in table.items()}
 

@@ -52,9 +52,7 @@ class TbliteGroundState:
             self._results = self._calculator.singlepoint(self._results)
         except RuntimeError as error:
             self._results = None
-            raise NotConverged(
-                f"GFN2-xTB self-consistent field failed: {' '.join(str(error).split())}"
-            ) from None
+            raise NotConverged(f"GFN2-xTB self-consistent field failed: {' '.join(str(error).split())}") from None
         return Evaluation(float(self._results.get("energy")), np.asarray(self._results.get("gradient")))
 
     def _open(self, positions_bohr: FloatArray) -> Any:
@@ -77,11 +75,6 @@ class TbliteGroundState:
             charges=np.asarray(get("charges")),
             dipole=np.asarray(get("dipole")),
         )
-
-    def bond_orders(self) -> FloatArray:
-        """Wiberg bond orders of the last evaluation."""
-        orders: FloatArray = np.asarray(self._evaluated().get("bond-orders"))
-        return orders
 
     def _evaluated(self) -> Any:
         if self._results is None:

@@ -48,9 +48,7 @@ class LibxtbGroundState:
             self._results = self._calculator.singlepoint(self._results)
         except XTBException as error:
             self._results = None
-            raise NotConverged(
-                f"GFN2-xTB self-consistent field failed: {' '.join(str(error).split())}"
-            ) from None
+            raise NotConverged(f"GFN2-xTB self-consistent field failed: {' '.join(str(error).split())}") from None
         return Evaluation(self._results.get_energy(), self._results.get_gradient())
 
     @cached_property
@@ -76,11 +74,6 @@ class LibxtbGroundState:
             charges=results.get_charges(),
             dipole=results.get_dipole(),
         )
-
-    def bond_orders(self) -> FloatArray:
-        """Wiberg bond orders of the last evaluation."""
-        orders: FloatArray = np.asarray(self._evaluated().get_bond_orders())
-        return orders
 
     def _evaluated(self) -> Results:
         if self._results is None:

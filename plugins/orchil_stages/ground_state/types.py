@@ -52,10 +52,6 @@ class GroundState(Protocol):
         """Orbitals at the geometry of the last evaluation."""
         ...
 
-    def bond_orders(self) -> FloatArray:
-        """Wiberg bond orders at the last evaluation, shape (atoms, atoms)."""
-        ...
-
 
 class Opener(Protocol):
     """Makes a calculator; see :func:`orchil_stages.ground_state.open_ground_state`."""

@@ -51,9 +51,7 @@ _MAX_BONDS = 5
 def listed_amine_cautions(molecule: Mol) -> tuple[str, ...]:
     """A caution naming each listed amine that the species is, or could give by azo cleavage."""
     itself = _listed_among(molecule)
-    freed = set[str]().union(
-        *(_listed_among(_cut(molecule, some)) for some in _some_of(_cleavable_bonds(molecule)))
-    )
+    freed = set[str]().union(*(_listed_among(_cut(molecule, some)) for some in _some_of(_cleavable_bonds(molecule))))
     seen = [f"this is {name}" for name in sorted(itself)]
     seen += [f"azo cleavage could free {name}" for name in sorted(freed - itself)]
     return tuple(f"{what}, {_DEFERENCE}" for what in seen)

@@ -36,9 +36,7 @@ def choose_part(molecule: Mol) -> Parts:
     parts = Chem.GetMolFrags(molecule, asMols=True, sanitizeFrags=False)
     if len(parts) == 1:
         return Parts(parts[0])
-    ranked = sorted(
-        ((conjugation(part), Chem.MolToSmiles(part), part) for part in parts), key=lambda r: r[:2]
-    )
+    ranked = sorted(((conjugation(part), Chem.MolToSmiles(part), part) for part in parts), key=lambda r: r[:2])
     size, smiles, chosen = ranked.pop()
     for _, _, part in ranked:
         _check_set_apart(part, chosen)
@@ -74,27 +72,19 @@ def _largest_connected(neighbours: dict[int, list[int]]) -> int:
 def _choice_notes(smiles: str, apart: tuple[str, ...], rivals: set[str]) -> tuple[str, ...]:
     notes = [f"set apart: {', '.join(apart)}"]
     if smiles in apart:
-        notes.append(
-            f"the species occurs {apart.count(smiles) + 1} times in the row; one of them is computed"
-        )
+        notes.append(f"the species occurs {apart.count(smiles) + 1} times in the row; one of them is computed")
     if rivals:
-        notes.append(
-            f"also conjugated over as many atoms: {', '.join(sorted(rivals))}; give it a row of its own"
-        )
+        notes.append(f"also conjugated over as many atoms: {', '.join(sorted(rivals))}; give it a row of its own")
     return tuple(notes)
 
 
 def _check_set_apart(part: Mol, chosen: Mol) -> None:
     metals = sorted({a.GetSymbol() for a in part.GetAtoms() if a.GetSymbol() not in _BENIGN})
     if metals and not _is_inorganic_anion(part):
-        raise OutOfScope(
-            f"{', '.join(metals)} beside the dye may be bound to it; metal complexes are not handled"
-        )
+        raise OutOfScope(f"{', '.join(metals)} beside the dye may be bound to it; metal complexes are not handled")
     ligated = {a.GetSymbol() for a in part.GetAtoms()} & _ALKALINE_EARTHS
     if ligated and sum(map(_is_bare_nitrogen_anion, chosen.GetAtoms())) >= 2:
-        raise OutOfScope(
-            f"{', '.join(ligated)} with a dye that holds N-: a metal complex, which is not handled"
-        )
+        raise OutOfScope(f"{', '.join(ligated)} with a dye that holds N-: a metal complex, which is not handled")
 
 
 def _is_inorganic_anion(part: Mol) -> bool:

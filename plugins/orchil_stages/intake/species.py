@@ -53,8 +53,7 @@ def _check_elements(molecule: Mol) -> None:
         raise OutOfScope("the structure has a placeholder atom (*, R); draw the whole molecule")
     if strange:
         raise OutOfScope(
-            f"contains {', '.join(strange)}; handled are {' '.join(HANDLED)}, "
-            "and simple metal ions as counter-ions"
+            f"contains {', '.join(strange)}; handled are {' '.join(HANDLED)}, and simple metal ions as counter-ions"
         )
 
 
@@ -86,13 +85,9 @@ def _radical() -> QueryAtom:
 def _open_stereo(molecule: Mol) -> tuple[str, ...]:
     """Notes on stereo that the drawing leaves open; the embedding settles it."""
     open_places = [
-        place.type
-        for place in Chem.FindPotentialStereo(molecule)
-        if place.specified != Chem.StereoSpecified.Specified
+        place.type for place in Chem.FindPotentialStereo(molecule) if place.specified != Chem.StereoSpecified.Specified
     ]
     bonds = open_places.count(Chem.StereoType.Bond_Double)
     centres = open_places.count(Chem.StereoType.Atom_Tetrahedral)
     said = [(bonds, "double bond(s)", "E or Z"), (centres, "centre(s)", "R or S")]
-    return tuple(
-        f"{count} {what} drawn without {which}; the embedding chooses" for count, what, which in said if count
-    )
+    return tuple(f"{count} {what} drawn without {which}; the embedding chooses" for count, what, which in said if count)

@@ -89,6 +89,4 @@ def _unknown(text: str, key: str) -> str:
     near = difflib.get_close_matches(key, _by_name(), n=5, cutoff=0.6)
     names = list(dict.fromkeys(_by_name()[match].name for match in near))
     nearest = f"nearest: {', '.join(names)}" if names else "nothing known comes near"
-    return (
-        f"unknown medium '{text}' ({nearest}); give a solvent's name or SMILES, 'gas phase', or {_FILM_FORM}"
-    )
+    return f"unknown medium '{text}' ({nearest}); give a solvent's name or SMILES, 'gas phase', or {_FILM_FORM}"

@@ -83,9 +83,7 @@ def absorptivity_max(strength: ArrayLike, fwhm_cm1: ArrayLike) -> FloatArray:
     return np.asarray(strength, dtype=float) / (STRENGTH_PER_AREA * GAUSSIAN_AREA * width)
 
 
-def gaussian_band(
-    energy_ev: ArrayLike, centre_ev: ArrayLike, strength: ArrayLike, fwhm_ev: ArrayLike
-) -> FloatArray:
+def gaussian_band(energy_ev: ArrayLike, centre_ev: ArrayLike, strength: ArrayLike, fwhm_ev: ArrayLike) -> FloatArray:
     """Molar absorptivity (M^-1 cm^-1) at ``energy_ev`` of a Gaussian band; all arguments broadcast."""
     width = np.asarray(fwhm_ev, dtype=float)
     offset = (np.asarray(energy_ev, dtype=float) - np.asarray(centre_ev, dtype=float)) / width

@@ -31,13 +31,7 @@ class Internals:
     @property
     def size(self) -> int:
         """Number of coordinates."""
-        return (
-            len(self.stretches)
-            + len(self.bends)
-            + 2 * len(self.linear)
-            + len(self.torsions)
-            + len(self.planes)
-        )
+        return len(self.stretches) + len(self.bends) + 2 * len(self.linear) + len(self.torsions) + len(self.planes)
 
     def values(self, x: FloatArray) -> FloatArray:
         """All coordinates at positions ``x`` (atoms, 3) in bohr."""
@@ -165,18 +159,14 @@ def build_internals(x: FloatArray, bonds: IntArray) -> Internals:
     v, _ = _unit(x[triples[:, 2]] - x[triples[:, 1]])
     straight = _dot(u, v) < LINEAR_COSINE
     linear = triples[straight]
-    through = {(int(b), int(a)): int(c) for a, b, c in linear} | {
-        (int(b), int(c)): int(a) for a, b, c in linear
-    }
+    through = {(int(b), int(a)): int(c) for a, b, c in linear} | {(int(b), int(c)): int(a) for a, b, c in linear}
     return Internals(
         stretches=np.asarray(bonds, dtype=np.int64).reshape(-1, 2),
         bends=triples[~straight],
         linear=linear,
         frames=_frames(u[straight]),
         torsions=_find_torsions(around, bonds, through),
-        planes=np.array(
-            [(b, *near) for b, near in enumerate(around) if len(near) == 3], dtype=np.int64
-        ).reshape(-1, 4),
+        planes=np.array([(b, *near) for b, near in enumerate(around) if len(near) == 3], dtype=np.int64).reshape(-1, 4),
     )
 
 

@@ -81,9 +81,7 @@ def kinds(internals: Internals, numbers: IntArray, bonds: IntArray, x: FloatArra
     found.extend([("linear", "")] * (2 * len(internals.linear)))
     bonded = {_key(i, j) for i, j in bonds.tolist()}
     for _, b, c, _ in internals.torsions.tolist():
-        found.append(
-            ("torsion", _axis_kind(names, b, c, x, in_ring) if _key(b, c) in bonded else "linear axis")
-        )
+        found.append(("torsion", _axis_kind(names, b, c, x, in_ring) if _key(b, c) in bonded else "linear axis"))
     for b, *near in internals.planes.tolist():
         found.append(("plane", f"{names[b]} {sum(hydrogen[i] for i in near)}H"))
     return found

@@ -58,9 +58,7 @@ class Minimum:
 class Point:
     """One evaluated geometry with what depends on the place alone."""
 
-    def __init__(
-        self, x: FloatArray, energy: float, gradient: FloatArray, internals: Internals, model: FloatArray
-    ):
+    def __init__(self, x: FloatArray, energy: float, gradient: FloatArray, internals: Internals, model: FloatArray):
         self.x = x
         self.energy = energy
         self.gradient = gradient.ravel()
@@ -96,9 +94,7 @@ class Point:
 class Descent:
     """One walk downhill."""
 
-    def __init__(
-        self, evaluate: EnergyAndGradient, internals: Internals, model: FloatArray, goal: Goal
-    ) -> None:
+    def __init__(self, evaluate: EnergyAndGradient, internals: Internals, model: FloatArray, goal: Goal) -> None:
         self._evaluate = evaluate
         self._internals = internals
         self._goal = goal
@@ -142,9 +138,7 @@ class Descent:
         moved = self._internals.difference(trial.values, point.values)
         self._curvature.update(moved, trial.internal_gradient - point.internal_gradient)
         predicted = -float(step @ point.gradient) * share * (1 - 0.5 * share)
-        self._set_limit(
-            (point.energy - trial.energy) / max(predicted, 1e-9), predicted, share, share * largest
-        )
+        self._set_limit((point.energy - trial.energy) / max(predicted, 1e-9), predicted, share, share * largest)
         return trial
 
     def _set_limit(self, ratio: float, predicted: float, share: float, taken: float) -> None:

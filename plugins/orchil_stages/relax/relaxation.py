@@ -57,12 +57,9 @@ def relax_lowest(
     attempt: int = 1,
 ) -> Geometry:
     """The lowest relaxed conformer; the first failure is raised when none survives."""
-    species = Species(
-        conformers.atomic_numbers, identity.charge, conformers.bonds, solvation, identity.zwitterion
-    )
+    species = Species(conformers.atomic_numbers, identity.charge, conformers.bonds, solvation, identity.zwitterion)
     outcomes = [
-        _outcome(species, positions / BOHR_ANGSTROM, settings, attempt)
-        for positions in conformers.positions_angstrom
+        _outcome(species, positions / BOHR_ANGSTROM, settings, attempt) for positions in conformers.positions_angstrom
     ]
     relaxed = [outcome for outcome in outcomes if isinstance(outcome, Geometry)]
     if not relaxed:
@@ -78,9 +75,7 @@ def _outcome(species: Species, x: FloatArray, settings: RelaxSettings, attempt: 
         return error
 
 
-def relax_one(
-    species: Species, x: FloatArray, settings: RelaxSettings, held: tuple[Change, ...] = ()
-) -> Geometry:
+def relax_one(species: Species, x: FloatArray, settings: RelaxSettings, held: tuple[Change, ...] = ()) -> Geometry:
     """One structure (bohr) to its minimum, with walls on the ``held`` distances, checked but for topology."""
     geometry = _relax_unchecked(species, x, settings, held)
     check_topology(species.numbers, species.bonds, geometry.positions_angstrom)
@@ -100,9 +95,7 @@ def relax_harder(species: Species, x: FloatArray, settings: RelaxSettings) -> Ge
     return _noted(geometry, f"relaxed in {STAND_IN}: the drawn form does not hold in the gas phase")
 
 
-def _relax_held(
-    species: Species, x: FloatArray, settings: RelaxSettings, held: tuple[Change, ...]
-) -> Geometry:
+def _relax_held(species: Species, x: FloatArray, settings: RelaxSettings, held: tuple[Change, ...]) -> Geometry:
     """Hold each distance that changes, for a few rounds; the last changes are raised."""
     for _ in range(HOLD_ROUNDS):
         geometry = _relax_unchecked(species, x, settings, held)

@@ -22,9 +22,7 @@ from pydantic import Field
 class RelaxSettings(Frozen):
     """When a relaxation counts as done and what it may cost."""
 
-    gradient_norm: float = Field(
-        default=1e-3, gt=0, description="hartree/bohr, Euclidean norm over all coordinates"
-    )
+    gradient_norm: float = Field(default=1e-3, gt=0, description="hartree/bohr, Euclidean norm over all coordinates")
     energy_left_hartree: float = Field(default=5e-6, gt=0, description="predicted energy still to be won")
     max_gradients: int = Field(default=150, ge=1, description="evaluations for one structure")
     accuracy: float = Field(

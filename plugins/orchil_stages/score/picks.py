@@ -27,10 +27,7 @@ def pick_diverse(ranked: Iterable[int], smiles: Sequence[str], pick: Pick) -> di
         if len(picked) == pick.count:
             break
         print_of_row = _fingerprint(smiles[row])
-        if (
-            print_of_row is None
-            or max(BulkTanimotoSimilarity(print_of_row, taken), default=0.0) > 1 - pick.spread
-        ):
+        if print_of_row is None or max(BulkTanimotoSimilarity(print_of_row, taken), default=0.0) > 1 - pick.spread:
             continue
         taken.append(print_of_row)
         picked[row] = len(picked) + 1

@@ -21,9 +21,7 @@ def make_brief(title="Green stop", low=500.0):
 
 def make_rows(count):
     return [
-        CandidateRow(
-            row_number=n, name=f"dye-{n}", structure="C" * (n % 7 + 1), medium="toluene", extra={"batch": "A"}
-        )
+        CandidateRow(row_number=n, name=f"dye-{n}", structure="C" * (n % 7 + 1), medium="toluene", extra={"batch": "A"})
         for n in range(1, count + 1)
     ]
 
@@ -89,12 +87,8 @@ def make_transitions(energies=(2.0, 3.0)):
 
 
 def make_score(rank, *, pick=None, value=520.0):
-    want = WantResult(
-        quantity="absorption_max_nm", value=value, probability=0.8, weight=2.0, contribution=0.2
-    )
-    return Score(
-        rank=rank, score=1 / rank, hit_probability=0.5 / rank, pareto_front=1, pick=pick, wants=(want,)
-    )
+    want = WantResult(quantity="absorption_max_nm", value=value, probability=0.8, weight=2.0, contribution=0.2)
+    return Score(rank=rank, score=1 / rank, hit_probability=0.5 / rank, pareto_front=1, pick=pick, wants=(want,))
 
 
 def make_attempt(stage, digest, owner, *, ok=True, cpu=1.0, **changes):

@@ -46,10 +46,7 @@ def timed(what: str) -> Iterator[None]:
 def main(count: int, folder: Path) -> None:
     """Fill a store with ``count`` candidates and time what is done with it."""
     with Store.open(folder / "speed.db", create=True) as store:
-        rows = [
-            CandidateRow(n, f"dye-{n}", "C=C", medium="toluene", extra={"batch": "A"})
-            for n in range(1, count + 1)
-        ]
+        rows = [CandidateRow(n, f"dye-{n}", "C=C", medium="toluene", extra={"batch": "A"}) for n in range(1, count + 1)]
         with timed("add_candidates"):
             store.add_candidates(rows)
         with timed("add_candidates, all there already"):
@@ -78,8 +75,7 @@ def _fill(store: Store) -> None:
 
 def _scores(count: int) -> Iterator[tuple[int, Score]]:
     wants = tuple(
-        WantResult(quantity=name, value=1.0, probability=0.8, weight=2.0, contribution=0.2)
-        for name in NAMES[:3]
+        WantResult(quantity=name, value=1.0, probability=0.8, weight=2.0, contribution=0.2) for name in NAMES[:3]
     )
     for n in range(1, count + 1):
         pick = n if n <= 10 else None

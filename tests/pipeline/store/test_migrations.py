@@ -34,9 +34,7 @@ def test_keys_and_checks_agree_with_the_models(store):
             assert key == [column.name for column in table.primary_key], table.name
             checks = {check["name"] for check in inspector.get_check_constraints(table.name)}
             assert checks == {c.name for c in table.constraints if isinstance(c, sa.CheckConstraint)}
-            sql = connection.scalar(
-                sa.text("SELECT sql FROM sqlite_master WHERE name = :n"), {"n": table.name}
-            )
+            sql = connection.scalar(sa.text("SELECT sql FROM sqlite_master WHERE name = :n"), {"n": table.name})
             assert ("WITHOUT ROWID" in sql) is (table.dialect_options["sqlite"]["with_rowid"] is False)
 
 

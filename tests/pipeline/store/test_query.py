@@ -87,9 +87,7 @@ def test_mistakes_are_said_plainly(filled, sql, said):
 
 
 def test_rows_with_parameters_and_types(filled):
-    found = filled.query(
-        "SELECT candidate, rank, score FROM ranking WHERE status IN (?, ?)", ("done", "failed")
-    )
+    found = filled.query("SELECT candidate, rank, score FROM ranking WHERE status IN (?, ?)", ("done", "failed"))
     assert found["candidate"].tolist() == ["dye-1", "dye-2"]
     assert found["rank"].dtype == "Int64"
     assert found["rank"].tolist() == [1, pd.NA]
@@ -105,16 +103,12 @@ def test_an_empty_answer_keeps_its_columns(filled):
 
 def test_everything_a_reader_needs_is_allowed(filled):
     assert filled.query("VALUES (1), (2)").shape == (2, 1)
-    numbers = (
-        "WITH RECURSIVE n(i) AS (SELECT 1 UNION ALL SELECT i + 1 FROM n LIMIT 4) SELECT sum(i) AS s FROM n"
-    )
+    numbers = "WITH RECURSIVE n(i) AS (SELECT 1 UNION ALL SELECT i + 1 FROM n LIMIT 4) SELECT sum(i) AS s FROM n"
     assert filled.query(numbers)["s"].tolist() == [10]
     assert "rank" in filled.query("SELECT name FROM pragma_table_info('ranking')")["name"].tolist()
     versions = filled.query("SELECT key, value FROM screen, json_each(screen.versions)")
     assert versions.to_numpy().tolist() == [["orchil", "0.1"]]
-    assert filled.query("SELECT json_extract(brief, '$.title') AS t FROM screen")["t"].tolist() == [
-        "Green stop"
-    ]
+    assert filled.query("SELECT json_extract(brief, '$.title') AS t FROM screen")["t"].tolist() == ["Green stop"]
     window = "SELECT candidate, row_number() OVER (ORDER BY candidate DESC) AS n FROM ranking"
     assert filled.query(window)["n"].tolist() == [1, 2, 3]
     assert list(filled.query("SELECT 1 AS a, 2 AS a").columns) == ["a", "a"]

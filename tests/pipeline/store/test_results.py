@@ -94,12 +94,8 @@ def test_a_changed_library_is_refused_whole(store):
 
 def test_finished_work_and_its_records_are_found_again(filled):
     identity, notes = make_identity(), IntakeNotes(cautions=("energetic group",))
-    assert filled.known_work(["work-of-1-intake", "never"]) == {
-        "work-of-1-intake": (identity.digest, notes.digest)
-    }
-    assert filled.load_records([identity.digest, "never"]) == {
-        identity.digest: ("identity", identity.canonical_json)
-    }
+    assert filled.known_work(["work-of-1-intake", "never"]) == {"work-of-1-intake": (identity.digest, notes.digest)}
+    assert filled.load_records([identity.digest, "never"]) == {identity.digest: ("identity", identity.canonical_json)}
     assert filled.known_work([]) == {}
     many = [f"no-{n}" for n in range(12_000)]
     assert set(filled.known_work([*many, "work-of-1-excite"])) == {"work-of-1-excite"}
@@ -177,9 +173,7 @@ def test_quantities_have_units_and_intervals(filled):
 
 def test_a_new_record_replaces_the_old_one_with_all_it_said(store):
     store.add_candidates(make_rows(1))
-    store.commit(
-        finished(1, make_band(520.0, emission=560.0, cautions=("old",)), make_transitions((1, 2, 3)))
-    )
+    store.commit(finished(1, make_band(520.0, emission=560.0, cautions=("old",)), make_transitions((1, 2, 3))))
     store.commit(finished(1, make_band(480.0), make_transitions((2.5,))))
     row = store.ranking().iloc[0]
     assert row["absorption_max_nm"] == 480
@@ -192,9 +186,7 @@ def test_a_new_record_replaces_the_old_one_with_all_it_said(store):
 
 def test_no_nan_enters_a_column(store):
     store.add_candidates(make_rows(1))
-    bad = Quantity.model_construct(
-        name="cluster", value=math.nan, unit="1", low=None, high=None, coverage=0.9
-    )
+    bad = Quantity.model_construct(name="cluster", value=math.nan, unit="1", low=None, high=None, coverage=0.9)
     record = Cluster(number=1)
     object.__setattr__(record, "quantities", lambda: (bad,))
     store.commit(Batch(attempts=[make_attempt("a", "w", 1, cpu=math.nan)], links=[(1, record)]))
@@ -286,12 +278,8 @@ def test_scores_replace_the_earlier_ones_of_their_screen(filled):
     filled.commit(Batch(outcomes=[CandidateOutcome(3, "done")]))
     filled.put_library_records(screen, [(3, make_score(1, value=None))])
     assert filled.query("SELECT candidate_id FROM score")["candidate_id"].tolist() == [3]
-    assert filled.query("SELECT * FROM want_result")[["candidate_id", "position"]].to_numpy().tolist() == [
-        [3, 1]
-    ]
-    filled.put_library_records(
-        screen, [(3, Cluster(number=4))]
-    )  # another library stage leaves the scores alone
+    assert filled.query("SELECT * FROM want_result")[["candidate_id", "position"]].to_numpy().tolist() == [[3, 1]]
+    filled.put_library_records(screen, [(3, Cluster(number=4))])  # another library stage leaves the scores alone
     assert filled.ranking()["rank"].tolist()[0] == 1
     assert filled.candidate_page("dye-3").records["cluster"] == {"number": 4}
     assert filled.library_table(["cluster"]).column("cluster").value[1] == 4
@@ -392,15 +380,11 @@ def test_twenty_thousand_candidates(path):
         assert np.isnan(table.column("emission_max_nm").value).all()
         assert set(table.smiles) == {"C=C"}
         ranks = order[done].argsort().argsort() + 1
-        store.put_library_records(
-            screen, [(int(i) + 1, make_score(int(r))) for i, r in zip(done, ranks, strict=True)]
-        )
+        store.put_library_records(screen, [(int(i) + 1, make_score(int(r))) for i, r in zip(done, ranks, strict=True)])
         found = store.ranking(limit=len(done))
         assert found["rank"].tolist() == list(range(1, len(done) + 1))
         assert np.array_equal(found["absorption_max_nm"], peaks[done][ranks.argsort()])
-        plan = store.query(
-            "EXPLAIN QUERY PLAN SELECT * FROM ranking WHERE absorption_max_nm BETWEEN 500 AND 510"
-        )
+        plan = store.query("EXPLAIN QUERY PLAN SELECT * FROM ranking WHERE absorption_max_nm BETWEEN 500 AND 510")
         assert any("ix_band_absorption_max_nm" in step for step in plan["detail"])
         window = store.query("SELECT * FROM ranking WHERE absorption_max_nm BETWEEN 500 AND 510")
         assert len(window) == ((peaks >= 500) & (peaks <= 510)).sum()
