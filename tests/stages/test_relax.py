@@ -192,8 +192,8 @@ def test_the_same_minimum_as_a_plain_optimiser_with_a_fraction_of_the_gradients(
     with optimize.BFGS(atoms, alpha=2.5, logfile=None) as plain:
         plain.run(fmax=4e-4, steps=200)
     assert made.energy_hartree == pytest.approx(atoms.get_potential_energy(), abs=5e-5)
-    assert made.gradient_norm <= 1e-3
-    assert made.gradients_used <= 12
+    assert made.gradient_norm <= 8e-4
+    assert made.gradients_used <= 14
     assert made.gradients_used < 0.5 * bridge.calls
 
 

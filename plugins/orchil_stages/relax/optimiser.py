@@ -35,8 +35,8 @@ EnergyAndGradient = Callable[[FloatArray], tuple[float, FloatArray]]
 class Goal:
     """When to stop: gradient norm (hartree/bohr, all coordinates) and energy still to be won (hartree)."""
 
-    gradient_norm: float = 1e-3
-    energy: float = 5e-6
+    gradient_norm: float = 8e-4
+    energy: float = 2e-6
     max_gradients: int = 150
 
 
