@@ -129,9 +129,7 @@ class Board:
         """Learn which species earlier runs have finished, so that later twins are marked as duplicates."""
         rows = [(state, self._row(row)) for state, row in finished]
         steps = self._chain.entry_steps
-        works = {
-            (made.digest, step.position): self._digest(step, [made]) for _, made in rows for step in steps
-        }
+        works = {(made.digest, step.position): self._digest(step, [made]) for _, made in rows for step in steps}
         known = self._cache.known_work(list(works.values()))
         for state, row in rows:
             digests: dict[Kind, str] = {LibraryRow: row.digest}
@@ -177,16 +175,12 @@ class Board:
         if not reply.ok:
             return reply, ()
         try:
-            return reply, tuple(
-                Made.read(self._chain.kinds[kind], payload) for kind, payload in reply.records
-            )
+            return reply, tuple(Made.read(self._chain.kinds[kind], payload) for kind, payload in reply.records)
         except ValidationError as error:
             fault = error.errors(include_url=False)[0]
             place = ".".join(map(str, fault["loc"]))
             message = f"the stage returned a record that is not valid: {place}: {fault['msg']}"
-            bad = Reply(
-                False, [], "bad_output", message, False, reply.seconds, reply.cpu_seconds, reply.versions
-            )
+            bad = Reply(False, [], "bad_output", message, False, reply.seconds, reply.cpu_seconds, reply.versions)
             return bad, ()
 
     def _attempt_row(self, work: Work, reply: Reply) -> AttemptRow:
@@ -209,9 +203,7 @@ class Board:
         stage = work.step.stage
         digests = tuple(one.digest for one in made)
         self.batch.records += [(one.digest, one.record.kind, one.payload) for one in made]
-        self.batch.works.append(
-            WorkRow(work.digest, stage.name, stage.version, work.step.settings_json, digests)
-        )
+        self.batch.works.append(WorkRow(work.digest, stage.name, stage.version, work.step.settings_json, digests))
         self._unwritten[work.digest] = made
 
     def _complete(self, work: Work, made: tuple[Made, ...]) -> None:
@@ -290,9 +282,7 @@ class Board:
         root = self._root_cause(active)
         essential = root is not None and self._chain.steps[root].essential
         failure = active.failures[root] if root is not None else None
-        self.batch.links += [
-            (active.id, one.record) for kind, one in active.made.items() if kind is not LibraryRow
-        ]
+        self.batch.links += [(active.id, one.record) for kind, one in active.made.items() if kind is not LibraryRow]
         self.batch.outcomes.append(
             CandidateOutcome(
                 candidate_id=active.id,
@@ -319,9 +309,7 @@ class Board:
         first = self._first[active.species][1]
         return first if first != active.id else None
 
-    def _note_species(
-        self, digests: Mapping[Kind, str], who: tuple[int, int], *, settled: bool
-    ) -> str | None:
+    def _note_species(self, digests: Mapping[Kind, str], who: tuple[int, int], *, settled: bool) -> str | None:
         """Digest of what later steps take from the entry steps, None while that is not complete.
 
         The lowest row is the first of its species, except that one whose outcome is written stays the first.

@@ -137,8 +137,7 @@ def want_problems(brief: Brief, offers: dict[str, QuantityInfo]) -> list[str]:
             problems.append(f'want {number}: unknown quantity "{want.quantity}", {hint}')
         elif want.unit not in (None, info.unit):
             problems.append(
-                f'want {number}: {want.quantity} is in {info.unit}, not "{want.unit}": '
-                f"give the limits in {info.unit}"
+                f'want {number}: {want.quantity} is in {info.unit}, not "{want.unit}": give the limits in {info.unit}'
             )
     return problems
 
@@ -157,9 +156,7 @@ def _usable(stages: Iterable[Any], skipped: list[str]) -> list[Any]:
 def _chosen(stages: list[Any], brief: Brief) -> list[Any]:
     """The stages without those makers that ``use`` decides against."""
     return [
-        stage
-        for stage in stages
-        if all(brief.use.get(kind.kind, stage.name) == stage.name for kind in stage.makes)
+        stage for stage in stages if all(brief.use.get(kind.kind, stage.name) == stage.name for kind in stage.makes)
     ]
 
 

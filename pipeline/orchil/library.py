@@ -57,9 +57,7 @@ class ParsedRow:
     @property
     def row(self) -> LibraryRow:
         """The part that enters the physics."""
-        return LibraryRow(
-            structure=self.structure, format=self.format, medium=self.medium, charge=self.charge
-        )
+        return LibraryRow(structure=self.structure, format=self.format, medium=self.medium, charge=self.charge)
 
 
 def read(path: Path) -> Iterator[ParsedRow]:
@@ -112,9 +110,7 @@ def _encoding(path: Path) -> str:
 def _encoding_of(file: io.BufferedReader, name: str) -> str:
     head = file.peek(4)
     if not head.strip():
-        raise RequestError(
-            f'{name} is empty: a header with a "smiles" column and one candidate per row are needed'
-        )
+        raise RequestError(f'{name} is empty: a header with a "smiles" column and one candidate per row are needed')
     if head.startswith((codecs.BOM_UTF16_LE, codecs.BOM_UTF16_BE)):
         return "utf-16"
     if b"\0" in head or head.startswith((b"PK\x03\x04", b"\xd0\xcf\x11\xe0", b"\x1f\x8b", b"%PDF")):
@@ -152,15 +148,11 @@ def _cells(lines: Iterable[str], delimiter: str, file_name: str) -> Iterator[lis
                 return
             row += bool(cells)
             if cells and SENTINEL in cells[-1]:
-                raise RequestError(
-                    f"{file_name}: a quoted cell in row {row} never ends: close its quotation mark"
-                )
+                raise RequestError(f"{file_name}: a quoted cell in row {row} never ends: close its quotation mark")
             if cells:
                 yield cells
     except csv.Error as error:
-        raise RequestError(
-            f"{file_name}: row {row + 1} cannot be read ({error}): look for a stray quote"
-        ) from error
+        raise RequestError(f"{file_name}: row {row + 1} cannot be read ({error}): look for a stray quote") from error
 
 
 def _with_sentinel(lines: Iterable[str]) -> Iterator[str]:
@@ -219,9 +211,7 @@ def _cell_count_error(found: int, expected: int) -> str | None:
     return f"the row has {found} cells, the header {expected}: {more}"
 
 
-def _row(
-    number: int, named: dict[str, str], extra: dict[str, str], kind: str, error: str | None
-) -> ParsedRow:
+def _row(number: int, named: dict[str, str], extra: dict[str, str], kind: str, error: str | None) -> ParsedRow:
     """A row from texts by meaning; the first fault is its error."""
     charge, charge_error = _charge(named.get("charge", ""))
     structure = named.get("structure", "")

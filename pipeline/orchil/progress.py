@@ -32,9 +32,7 @@ class Progress(Protocol):
 class PlainProgress:
     """One line at the start, one a minute, one at the end."""
 
-    def __init__(
-        self, stream: TextIO, *, every: float = PLAIN_SECONDS, clock: Callable[[], float] = time.monotonic
-    ):
+    def __init__(self, stream: TextIO, *, every: float = PLAIN_SECONDS, clock: Callable[[], float] = time.monotonic):
         self._stream = stream
         self._every = every
         self._clock = clock

@@ -61,9 +61,7 @@ class Registry:
         manager.check_pending()
         found = manager.hook.orchil_stages.get_hookimpls() + manager.hook.orchil_checks.get_hookimpls()
         if not found:
-            raise ValueError(
-                "it fills no hook: mark a function orchil_stages with pluggy.HookimplMarker('orchil')"
-            )
+            raise ValueError("it fills no hook: mark a function orchil_stages with pluggy.HookimplMarker('orchil')")
         for call in manager.hook.orchil_stages.get_hookimpls():
             stages: Any = call.function()
             for stage in stages:
@@ -126,9 +124,7 @@ def _load_file(path: Path) -> object:
 
 
 def _installed() -> Iterator[tuple[str, Callable[[], object]]]:
-    points = sorted(
-        entry_points(group=hookspecs.ENTRY_POINT_GROUP), key=lambda point: (point.name, point.value)
-    )
+    points = sorted(entry_points(group=hookspecs.ENTRY_POINT_GROUP), key=lambda point: (point.name, point.value))
     for point in points:
         distribution = point.dist.name if point.dist else "unknown distribution"
         yield f"{point.name} ({distribution})", point.load

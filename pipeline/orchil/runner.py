@@ -42,9 +42,7 @@ class Outcome:
 class Runner:
     """One run over those candidates that are still waiting."""
 
-    def __init__(
-        self, store: Store, chain: Chain, brief: Brief, pool: Supervisor, progress: Progress
-    ) -> None:
+    def __init__(self, store: Store, chain: Chain, brief: Brief, pool: Supervisor, progress: Progress) -> None:
         self._store = store
         self._brief = brief
         self._pool = pool

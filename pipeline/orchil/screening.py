@@ -58,9 +58,7 @@ def checked_brief(path: Path, registry: Registry) -> tuple[Brief, Chain]:
         raise RequestError(*(f"{path.name}: {problem}" for problem in error.problems)) from error
 
 
-def screen(
-    made: Plan, store: Store, *, pool: Supervisor, progress: Progress, retry_failed: bool = False
-) -> Outcome:
+def screen(made: Plan, store: Store, *, pool: Supervisor, progress: Progress, retry_failed: bool = False) -> Outcome:
     """Run a plan to its end and rank. Run again with the same store, it continues."""
     with store.lock():
         screen_id = _begin(store, made)
@@ -115,9 +113,7 @@ def _library_records(store: Store, step: LibraryStep, brief: Brief) -> list[tupl
         raise RunError(f"the library stage {name} failed: {type(error).__name__}: {error}") from error
     strange = next((record for _, record in made if type(record) not in step.stage.makes), None)
     if strange is not None:
-        raise RunError(
-            f"the library stage {name} returned a {type(strange).__name__}, which is not among its makes"
-        )
+        raise RunError(f"the library stage {name} returned a {type(strange).__name__}, which is not among its makes")
     return made
 
 

@@ -212,9 +212,7 @@ class Supervisor:
         if task is None:
             return None
         shutil.rmtree(task.scratch, ignore_errors=True)
-        return Result(
-            task, Reply(False, code=code, message=message, recoverable=recoverable, seconds=seconds)
-        )
+        return Result(task, Reply(False, code=code, message=message, recoverable=recoverable, seconds=seconds))
 
     def _stillborn(self, slot: _Slot, words: str) -> None:
         """A child that died before it was ready: try again a few times, then give the run up."""

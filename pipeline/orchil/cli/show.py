@@ -73,7 +73,7 @@ def _show_page(page: CandidatePage, screen: ScreenInfo, out: Console) -> None:
     for sentence in _sentences(page):
         out.print(cell_text(sentence))
     if not missing(row.get("absorption_max_nm")):
-        out.print(table(["band", "value", "unit"], _band_rows(row)))
+        out.print(table(["band", "value", "unit"], _band_rows(row, page.records.get("band", {}))))
     if page.wants:
         out.print(table(["want", "value", "probability", "weight", "share of the loss"], _want_rows(page)))
     if "transitions" in page.records:
@@ -87,9 +87,7 @@ def _show_page(page: CandidatePage, screen: ScreenInfo, out: Console) -> None:
 def _sentences(page: CandidatePage) -> list[str]:
     """What there is to say, in order: structure, state, standing, twins, cautions, notes."""
     row, notes = page.row, page.records.get("intake_notes", {})
-    structure = row["smiles"] or (
-        page.candidate.structure if page.candidate.format == "smiles" else "a mol block"
-    )
+    structure = row["smiles"] or (page.candidate.structure if page.candidate.format == "smiles" else "a mol block")
     said = [f"structure: {structure}", f"status: {page.candidate.status}"]
     if row["reason"]:
         said.append(f"reason: {row['reason']}")
@@ -126,10 +124,21 @@ _BAND = {
 }
 
 
-def _band_rows(row: Mapping[str, Any]) -> list[tuple[object, ...]]:
+def _band_rows(row: Mapping[str, Any], band: Mapping[str, Any]) -> list[tuple[object, ...]]:
     span = interval(row["absorption_max_nm"], row["absorption_low_nm"], row["absorption_high_nm"])
-    rest = [(name, row[key], unit) for key, (name, unit) in _BAND.items() if not missing(row[key])]
+    rest = [(name, _spanned(row, band, key), unit) for key, (name, unit) in _BAND.items() if not missing(row[key])]
     return [("absorption maximum", span, "nm"), *rest]
+
+
+def _spanned(row: Mapping[str, Any], band: Mapping[str, Any], key: str) -> object:
+    """The value with its interval where the band has one (``emission_max_nm`` goes with ``emission_low_nm``)."""
+    stem = key.replace("_max_nm", "")
+    unit = "_nm" if stem != key else ""
+    low, high = band.get(f"{stem}_low{unit}"), band.get(f"{stem}_high{unit}")
+    if low is None or high is None:
+        return row[key]
+    value, least, most = (float(f"{float(number):.3g}") for number in (row[key], low, high))
+    return interval(value, least, most)
 
 
 def _want_rows(page: CandidatePage) -> list[tuple[object, ...]]:
@@ -156,8 +165,7 @@ def _state_rows(transitions: Mapping[str, Any]) -> list[tuple[object, ...]]:
     for at, energy in enumerate(transitions["energy_ev"]):
         dipole = " ".join(f"{part:.2f}" for part in transitions["transition_dipole_debye"][at])
         numbers = [
-            transitions[key][at]
-            for key in ("long_axis_angle_deg", "electron_shift_angstrom", "charge_transfer_share")
+            transitions[key][at] for key in ("long_axis_angle_deg", "electron_shift_angstrom", "charge_transfer_share")
         ]
         strength = NumberText(digits(transitions["oscillator_strength"][at]))
         rows.append(

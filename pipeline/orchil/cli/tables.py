@@ -47,13 +47,9 @@ def console(stream: TextIO | None = None) -> Console:
 def table(headers: Sequence[str], rows: Iterable[Sequence[object]], *, title: str | None = None) -> Table:
     """A table of plain cells; columns of numbers are flush right."""
     cells = [list(row) for row in rows]
-    made = Table(
-        box=box.SIMPLE_HEAD, title=Text(title) if title else None, title_justify="left", pad_edge=False
-    )
+    made = Table(box=box.SIMPLE_HEAD, title=Text(title) if title else None, title_justify="left", pad_edge=False)
     for at, header in enumerate(headers):
-        numeric = bool(cells) and all(
-            missing(row[at]) or row[at] == "" or is_number(row[at]) for row in cells
-        )
+        numeric = bool(cells) and all(missing(row[at]) or row[at] == "" or is_number(row[at]) for row in cells)
         made.add_column(Text(header), justify="right" if numeric else "left", overflow="fold")
     for row in cells:
         made.add_row(*(Text(cell_text(cell)) for cell in row))

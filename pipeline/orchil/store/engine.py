@@ -28,9 +28,7 @@ def writable_engine(location: Location, *, foreign_keys: bool = True) -> sa.Engi
     """
     engine = _engine(location.url)
     if location.path is not None:
-        _set_pragmas(
-            engine, "journal_mode = WAL", f"foreign_keys = {'ON' if foreign_keys else 'OFF'}", *_PRAGMAS
-        )
+        _set_pragmas(engine, "journal_mode = WAL", f"foreign_keys = {'ON' if foreign_keys else 'OFF'}", *_PRAGMAS)
         event.listen(engine, "begin", _begin)
     return engine
 
@@ -73,9 +71,7 @@ def check_log(engine: sa.Engine, location: Location) -> None:
     with writer(engine).begin() as connection:
         mode = connection.exec_driver_sql("PRAGMA journal_mode").scalar_one()
         if mode != "wal":
-            raise StoreError(
-                f"{location} is on a disk without a write-ahead log: keep the store on a local disk"
-            )
+            raise StoreError(f"{location} is on a disk without a write-ahead log: keep the store on a local disk")
         version = connection.exec_driver_sql("PRAGMA user_version").scalar_one()
         connection.exec_driver_sql(f"PRAGMA user_version = {int(version)}")
 

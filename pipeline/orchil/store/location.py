@@ -55,9 +55,7 @@ def locate(target: str | Path) -> Location:
     try:
         url = sa.make_url(target)
     except sa.exc.ArgumentError:
-        raise StoreError(
-            f"{target} is neither a file nor a database URL like postgresql+psycopg://host/name"
-        ) from None
+        raise StoreError(f"{target} is neither a file nor a database URL like postgresql+psycopg://host/name") from None
     if url.get_backend_name() != "sqlite":
         return Location(url, None)
     if not url.database or url.database == ":memory:":

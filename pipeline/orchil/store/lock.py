@@ -46,18 +46,14 @@ def _take(descriptor: int, location: Location) -> None:
         fcntl.flock(descriptor, fcntl.LOCK_EX | fcntl.LOCK_NB)
     except BlockingIOError:
         holder = os.pread(descriptor, 200, 0).decode(errors="replace") or "another process"
-        raise StoreError(
-            f"{location} is in use by {holder}: wait for it, stop it, or use another store"
-        ) from None
+        raise StoreError(f"{location} is in use by {holder}: wait for it, stop it, or use another store") from None
 
 
 @contextmanager
 def _server_lock(engine: sa.Engine, location: Location) -> Iterator[None]:
     with engine.connect() as connection:
         if not connection.scalar(sa.select(sa.func.pg_try_advisory_lock(_SERVER_LOCK))):
-            raise StoreError(
-                f"{location} is in use by another coordinator: wait for it or use another database"
-            )
+            raise StoreError(f"{location} is in use by another coordinator: wait for it or use another database")
         connection.commit()
         try:
             yield

@@ -29,9 +29,7 @@ def revision(engine: sa.Engine, location: Location) -> str | None:
             raise StoreError(f"{location} is not an Orchil store: it is a database made by something else")
         found: str | None = connection.scalar(sa.text("SELECT version_num FROM alembic_version"))
     if found not in REVISIONS:
-        raise StoreError(
-            f"{location} was made by a newer Orchil (revision {found}): update Orchil to open it"
-        )
+        raise StoreError(f"{location} was made by a newer Orchil (revision {found}): update Orchil to open it")
     return found
 
 

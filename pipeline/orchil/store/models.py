@@ -49,9 +49,7 @@ def _json() -> sa.types.TypeEngine[Any]:
 
 
 def _candidate_key() -> sa.Column[int]:
-    return sa.Column(
-        "candidate_id", sa.Integer, sa.ForeignKey("candidate.id"), primary_key=True, autoincrement=False
-    )
+    return sa.Column("candidate_id", sa.Integer, sa.ForeignKey("candidate.id"), primary_key=True, autoincrement=False)
 
 
 def _number(name: str, *, optional: bool = False) -> sa.Column[float]:
@@ -82,9 +80,7 @@ candidate = sa.Table(
     sa.Column("charge", sa.Integer),
     sa.Column("extra", _json(), nullable=False),
     sa.Column("smiles", sa.Text),
-    sa.Column(
-        "medium_used", sa.Text, comment="as intake understood it; the brief's where the row names none"
-    ),
+    sa.Column("medium_used", sa.Text, comment="as intake understood it; the brief's where the row names none"),
     sa.Column("status", sa.Text, nullable=False, index=True),
     sa.Column("failed_stage", sa.Text),
     sa.Column("reason_code", sa.Text),
@@ -99,9 +95,7 @@ record = sa.Table(
     metadata,
     sa.Column("digest", sa.String(64), primary_key=True),
     sa.Column("kind", sa.Text, nullable=False),
-    sa.Column(
-        "payload", sa.Text, nullable=False, comment="canonical JSON; text, because the digest is over it"
-    ),
+    sa.Column("payload", sa.Text, nullable=False, comment="canonical JSON; text, because the digest is over it"),
     sa.Column("made_by", sa.String(64), comment="digest of the first work that made it"),
 )
 

@@ -30,10 +30,7 @@ def active_screen(connection: sa.Connection) -> ScreenInfo | None:
 
 def all_candidates(connection: sa.Connection) -> list[CandidateState]:
     """Every candidate in the order of the library."""
-    return [
-        CandidateState(*row)
-        for row in connection.execute(sa.select(*_STATE).order_by(candidate.c.row_number))
-    ]
+    return [CandidateState(*row) for row in connection.execute(sa.select(*_STATE).order_by(candidate.c.row_number))]
 
 
 def known_work(connection: sa.Connection, digests: Iterable[str]) -> dict[str, tuple[str, ...]]:
@@ -106,9 +103,7 @@ def candidate_page(connection: sa.Connection, name_or_id: str) -> CandidatePage 
         attempts=_attempts(connection, chosen.id, links),
         wants=_wants(connection, chosen.id),
         repeated_by=tuple(one.name for one in _states(connection, candidate.c.duplicate_of == chosen.id)),
-        same_name=tuple(
-            one.id for one in _states(connection, candidate.c.name == chosen.name) if one != chosen
-        ),
+        same_name=tuple(one.id for one in _states(connection, candidate.c.name == chosen.name) if one != chosen),
     )
 
 
@@ -119,36 +114,26 @@ def _states(connection: sa.Connection, condition: sa.ColumnElement[bool]) -> lis
 
 def _links(connection: sa.Connection, owner: int) -> Sequence[sa.Row[Any]]:
     query = sa.select(record).join(candidate_record, candidate_record.c.record_digest == record.c.digest)
-    return connection.execute(
-        query.where(candidate_record.c.candidate_id == owner).order_by(record.c.kind)
-    ).all()
+    return connection.execute(query.where(candidate_record.c.candidate_id == owner).order_by(record.c.kind)).all()
 
 
 def _ranking_row(connection: sa.Connection, row_number: int) -> dict[str, Any]:
-    found = connection.execute(
-        sa.text("SELECT * FROM ranking WHERE row_number = :number"), {"number": row_number}
-    )
+    found = connection.execute(sa.text("SELECT * FROM ranking WHERE row_number = :number"), {"number": row_number})
     return dict(found.mappings().one())
 
 
-def _attempts(
-    connection: sa.Connection, owner: int, links: Sequence[sa.Row[Any]]
-) -> tuple[dict[str, Any], ...]:
+def _attempts(connection: sa.Connection, owner: int, links: Sequence[sa.Row[Any]]) -> tuple[dict[str, Any], ...]:
     """Tries made for this candidate, and those of shared work whose results it holds in full."""
     held = {row.digest for row in links}
     makers = known_work(connection, {row.made_by for row in links if row.made_by})
     shared = [digest for digest, outputs in makers.items() if held.issuperset(outputs)]
-    query = sa.select(attempt).where(
-        sa.or_(attempt.c.candidate_id == owner, attempt.c.work_digest.in_(shared))
-    )
+    query = sa.select(attempt).where(sa.or_(attempt.c.candidate_id == owner, attempt.c.work_digest.in_(shared)))
     return _dictionaries(connection.execute(query.order_by(attempt.c.id)))
 
 
 def _wants(connection: sa.Connection, owner: int) -> tuple[dict[str, Any], ...]:
     latest = sa.select(screen.c.id).order_by(screen.c.active_at.desc()).limit(1).scalar_subquery()
-    mine = sa.select(want_result).where(
-        want_result.c.candidate_id == owner, want_result.c.screen_id == latest
-    )
+    mine = sa.select(want_result).where(want_result.c.candidate_id == owner, want_result.c.screen_id == latest)
     return _dictionaries(connection.execute(mine.order_by(want_result.c.position)))
 
 

@@ -36,9 +36,7 @@ Parameters = Sequence[Any] | Mapping[str, Any]
 def run_query(location: Location, sql: str, parameters: Parameters = ()) -> pd.DataFrame:
     """The rows of one SELECT; :class:`StoreError` says what is wrong with the statement."""
     if location.path is None:
-        raise StoreError(
-            "queries run on store files; on a server use its own client with a role that may only read"
-        )
+        raise StoreError("queries run on store files; on a server use its own client with a role that may only read")
     with closing(connect_read_only(location.path)) as connection:
         connection.execute("PRAGMA query_only = ON")
         connection.execute("PRAGMA busy_timeout = 30000")
@@ -79,9 +77,7 @@ def _rows(connection: sqlite3.Connection, sql: str, parameters: Parameters, gate
     except (sqlite3.Error, sqlite3.Warning, ValueError, OverflowError) as error:
         raise StoreError(_explain(error, gate)) from error
     if cursor.description is None:
-        raise StoreError(
-            "the query gives no rows: write one SELECT, for example SELECT * FROM ranking LIMIT 10"
-        )
+        raise StoreError("the query gives no rows: write one SELECT, for example SELECT * FROM ranking LIMIT 10")
     return frame([column[0] for column in cursor.description], rows)
 
 

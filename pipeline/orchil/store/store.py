@@ -110,9 +110,7 @@ class Store:
             if same is not None:
                 connection.execute(sa.update(screen).where(screen.c.id == same).values(changes))
                 return int(same)
-            new = sa.insert(screen).values(
-                created=changes["active_at"], brief=content, brief_digest=digest, **changes
-            )
+            new = sa.insert(screen).values(created=changes["active_at"], brief=content, brief_digest=digest, **changes)
             key = connection.execute(new).inserted_primary_key
             assert key is not None
             return int(key[0])

@@ -44,15 +44,12 @@ def state_rows(owner: int, found: Transitions) -> list[Row]:
     columns["leading"] = list(_leading(found))
     columns["state"] = np.arange(1, len(found.energy_ev) + 1).tolist()
     return [
-        {"candidate_id": owner, **dict(zip(columns, row, strict=True))}
-        for row in zip(*columns.values(), strict=True)
+        {"candidate_id": owner, **dict(zip(columns, row, strict=True))} for row in zip(*columns.values(), strict=True)
     ]
 
 
 def _leading(found: Transitions) -> Iterator[str]:
-    pairs = zip(
-        found.leading_from.tolist(), found.leading_to.tolist(), found.leading_weight.tolist(), strict=True
-    )
+    pairs = zip(found.leading_from.tolist(), found.leading_to.tolist(), found.leading_weight.tolist(), strict=True)
     for below, above, weight in pairs:
         yield f"{_orbital('HOMO', -below)} -> {_orbital('LUMO', above)} ({weight:.2f})"
 

@@ -65,8 +65,7 @@ def write_links(connection: sa.Connection, links: Sequence[Link]) -> None:
     """Say which records a candidate has now, and fill the tables people query from them."""
     newest = {(owner, made.kind): made for owner, made in links}
     rows = [
-        {"candidate_id": owner, "kind": kind, "record_digest": made.digest}
-        for (owner, kind), made in newest.items()
+        {"candidate_id": owner, "kind": kind, "record_digest": made.digest} for (owner, kind), made in newest.items()
     ]
     bulk.add_or_replace(connection, candidate_record, rows)
     current = [(owner, made) for (owner, _), made in newest.items()]
@@ -85,9 +84,7 @@ def forget(connection: sa.Connection, candidates: Sequence[int]) -> None:
     for table in (candidate_record, quantity, transition, band):
         connection.execute(sa.delete(table).where(table.c.candidate_id == sa.bindparam("key")), keys)
     empty = dict.fromkeys(_KNOWN_LATER)
-    change = (
-        sa.update(candidate).where(candidate.c.id == sa.bindparam("key")).values(status="waiting", **empty)
-    )
+    change = sa.update(candidate).where(candidate.c.id == sa.bindparam("key")).values(status="waiting", **empty)
     connection.execute(change, keys)
 
 
@@ -110,9 +107,7 @@ def _without_nan(kind: str, payload: str) -> str:
 
 
 def _refuse(kind: str, word: str) -> None:
-    raise StoreError(
-        f"a record of kind '{kind}' holds {word}: a stage must fail instead of making such a number"
-    )
+    raise StoreError(f"a record of kind '{kind}' holds {word}: a stage must fail instead of making such a number")
 
 
 def _work(row: WorkRow) -> Row:
@@ -146,9 +141,7 @@ def _write_quantities(connection: sa.Connection, links: Sequence[Link]) -> None:
     gone = offered - {(owner, one.name) for owner, one in made}
     if gone:
         key = (quantity.c.candidate_id == sa.bindparam("owner")) & (quantity.c.name == sa.bindparam("gone"))
-        connection.execute(
-            sa.delete(quantity).where(key), [{"owner": owner, "gone": name} for owner, name in gone]
-        )
+        connection.execute(sa.delete(quantity).where(key), [{"owner": owner, "gone": name} for owner, name in gone])
     rows = [
         {
             "candidate_id": owner,
@@ -171,9 +164,7 @@ def _write_typed(connection: sa.Connection, links: Sequence[Link]) -> None:
     if excited:
         old = sa.delete(transition).where(transition.c.candidate_id == sa.bindparam("key"))
         connection.execute(old, [{"key": owner} for owner, _ in excited])
-    bulk.insert(
-        connection, transition, [row for owner, found in excited for row in typed.state_rows(owner, found)]
-    )
+    bulk.insert(connection, transition, [row for owner, found in excited for row in typed.state_rows(owner, found)])
     _update_candidates(connection, _known_from_intake(links))
 
 

@@ -8,7 +8,7 @@ import numpy as np
 from orchil_schemas import FloatArray, IntArray
 
 from .dipoles import hole_and_particle
-from .levels import bonded
+from .environment import bonded
 from .response import States
 from .window import Window
 

@@ -1,7 +1,8 @@
-"""First-order shifts of the orbital levels, resolved by shell, coordination and charge.
+"""First-order shifts of the orbital levels, resolved by shell, surroundings, direction and charge.
 
-The shift of a basis function is a smooth function of the geometry (fractional coordination number) and of the
-density (atomic charge), never of bond symbols, so that the energies are smooth along a distortion.
+The shift of a basis function is a smooth function of the geometry (neighbours, fractional coordination number,
+directions of bonds) and of the density (atomic charge), never of bond symbols, so that the energies are smooth along a
+distortion.
 """
 
 from __future__ import annotations
@@ -10,68 +11,35 @@ from dataclasses import dataclass
 from functools import cache
 
 import numpy as np
-from numpy.typing import NDArray
-from orchil_schemas import FloatArray, IntArray
+from orchil_schemas import FloatArray
 
-from orchil_stages.ground_state import BOHR_ANGSTROM
-
-from .parameters import CHARGED, Parameters, level_kinds
+from .environment import bond_counts, bond_directions, coordination_numbers, neighbour_directions
+from .parameters import CHARGED, NEIGHBOURED, SHAPED, Parameters, level_kinds
 from .window import HOPPING_CLASSES, Window
 
 _WIDTH = 0.3
 """Width of the interpolation between coordination numbers."""
 
-# Covalent radii in angstrom: Pyykko, Atsumi, Chem. Eur. J. 15, 186 (2009), metals apart
-_RADII = {
-    1: 0.32, 3: 1.33, 5: 0.85, 6: 0.75, 7: 0.71, 8: 0.63, 9: 0.64, 11: 1.55, 12: 1.39, 13: 1.26,
-    14: 1.16, 15: 1.11, 16: 1.03, 17: 0.99, 19: 1.96, 32: 1.21, 33: 1.21, 34: 1.16, 35: 1.14,
-    50: 1.40, 52: 1.36, 53: 1.33,
-}  # fmt: skip
-
-
-def coordination_numbers(numbers: IntArray, positions: FloatArray) -> FloatArray:
-    """Fractional coordination number of each atom (positions in bohr).
-
-    Counting function of the D3 dispersion model: Grimme, Antony, Ehrlich, Krieg, J. Chem. Phys. 132, 154104
-    (2010).
-    """
-    counts: FloatArray = _bond_counts(numbers, positions).sum(axis=1)
-    return counts
-
-
-def bonded(numbers: IntArray, positions: FloatArray) -> NDArray[np.bool_]:
-    """Which atoms are bonded by distance (positions in bohr): counted by more than a half, shape (atoms,
-    atoms).
-    """
-    return _bond_counts(numbers, positions) > 0.5
-
-
-def _bond_counts(numbers: IntArray, positions: FloatArray) -> FloatArray:
-    radii = np.array([_RADII[int(n)] for n in numbers]) / BOHR_ANGSTROM
-    distance = distances(positions)
-    np.fill_diagonal(distance, np.inf)
-    bond = 4.0 / 3.0 * (radii[:, None] + radii[None, :])
-    counts: FloatArray = 1.0 / (1.0 + np.exp(-16.0 * (bond / distance - 1.0)))
-    return counts
-
-
-def distances(positions: FloatArray) -> FloatArray:
-    """Matrix of distances between atoms, same unit as the positions."""
-    steps = positions[:, None, :] - positions[None, :, :]
-    matrix: FloatArray = np.sqrt((steps**2).sum(axis=2))
-    return matrix
-
 
 @dataclass(frozen=True)
 class LevelFeatures:
-    """How much each trained level and charge response enters the shift of each basis function."""
+    """What the trained numbers multiply.
 
-    kinds: FloatArray  # (functions, level kinds)
-    charges: FloatArray  # (functions, charged elements)
+    diagonal: (functions, numbers) for the shift of each basis function; shapes: (numbers, m, m) for the shifts of p
+    functions by their direction, between the orbitals of the window.
+    """
+
+    diagonal: FloatArray
+    shapes: FloatArray
 
 
 def level_features(window: Window) -> LevelFeatures:
-    """Features of the basis functions; rows of ``kinds`` sum to 1 for elements that are trained, else 0."""
+    """Features of a window; they do not depend on any trained number."""
+    return LevelFeatures(np.hstack([_kinds(window), _charges(window), _neighbours(window)]), _shapes(window))
+
+
+def _kinds(window: Window) -> FloatArray:
+    """Rows sum to 1 for elements that are trained, else 0; shape (functions, level kinds)."""
     coordination = coordination_numbers(window.numbers, window.positions)
     atom, momentum = window.where.atom, window.where.momentum
     number = window.numbers[atom]
@@ -81,8 +49,41 @@ def level_features(window: Window) -> LevelFeatures:
         if len(rows):
             centres = [level_kinds()[c].coordination or 0.0 for c in columns]
             kinds[rows[:, None], columns] = _soft_choice(coordination[atom[rows]], np.array(centres))
-    charges = (number[:, None] == np.array(CHARGED)) * window.charges[atom][:, None]
-    return LevelFeatures(kinds, charges)
+    return kinds
+
+
+def _charges(window: Window) -> FloatArray:
+    """Atomic charge in the column of the element, shape (functions, elements)."""
+    atom = window.where.atom
+    charges: FloatArray = (window.numbers[atom][:, None] == np.array(CHARGED)) * window.charges[atom][:, None]
+    return charges
+
+
+def _neighbours(window: Window) -> FloatArray:
+    """For p functions: number of neighbours that are neither C nor H, of H, and the charge of all neighbours."""
+    atom = window.where.atom
+    counts = bond_counts(window.numbers, window.positions)
+    hetero = counts @ ~np.isin(window.numbers, (1, 6))
+    hydrogen = counts @ (window.numbers == 1)
+    around = counts @ window.charges
+    p_type = (window.where.momentum == 1)[:, None]
+    element = p_type & (window.numbers[atom][:, None] == np.array(NEIGHBOURED))
+    return np.hstack([element * values[atom][:, None] for values in (hetero, hydrogen, around)])
+
+
+def _shapes(window: Window) -> FloatArray:
+    """Window matrix elements of the bond directions on the p functions of each element group."""
+    starts = np.flatnonzero((window.where.momentum == 1) & (np.diff(window.where.shell, prepend=-1) != 0))
+    atoms = window.where.atom[starts]
+    c = window.loewdin[starts[:, None] + np.arange(3)]
+    made = []
+    for tensors in (bond_directions, neighbour_directions):
+        found = tensors(window.numbers, window.positions)[atoms]
+        for group in SHAPED:
+            inside = np.isin(window.numbers[atoms], group)
+            half = found[inside] @ c[inside]
+            made.append(np.einsum("axm,axn->mn", c[inside], half, optimize=True))
+    return np.array(made)
 
 
 @cache
@@ -112,28 +113,31 @@ class Levels:
 def corrected_levels(window: Window, features: LevelFeatures, parameters: Parameters) -> Levels:
     """GFN2 levels, scaled, with the trained shifts and couplings on top."""
     o = window.occupied
-    hop = np.einsum("c,cmn->mn", parameters.several(hopping_names()), window.hopping)
+    hop = np.tensordot(parameters.several(hopping_names()), window.hopping, axes=1)
     blocks = []
     for side, part in (("occ", slice(None, o)), ("virt", slice(o, None))):
-        shift = features.kinds @ parameters.several(level_names(side))
-        shift = shift + features.charges @ parameters.several(charge_names(side))
+        shift = features.diagonal @ parameters.several(diagonal_names(side))
+        shape = np.tensordot(parameters.several(shape_names(side)), features.shapes[:, part, part], axes=1)
         c = window.loewdin[:, part]
-        block = (c * shift[:, None]).T @ c + hop[part, part]
+        block = (c * shift[:, None]).T @ c + shape + hop[part, part]
         block[np.diag_indices_from(block)] += parameters["gap_scale"] * window.energies[part]
         blocks.append(block)
     return Levels(*blocks)
 
 
 @cache
-def level_names(side: str) -> tuple[str, ...]:
-    """Parameter names of the level shifts of one side, in the order of the features."""
-    return tuple(f"{side}:{kind.name}" for kind in level_kinds())
+def diagonal_names(side: str) -> tuple[str, ...]:
+    """Parameter names of the shifts of one side, in the order of ``LevelFeatures.diagonal``."""
+    kinds = (f"{side}:{kind.name}" for kind in level_kinds())
+    charges = (f"{side}_charge:{number}" for number in CHARGED)
+    around = (f"{side}_{what}:{number}" for what in ("hetero", "hydrogen", "around") for number in NEIGHBOURED)
+    return (*kinds, *charges, *around)
 
 
 @cache
-def charge_names(side: str) -> tuple[str, ...]:
-    """Parameter names of the charge responses of one side."""
-    return tuple(f"{side}_charge:{number}" for number in CHARGED)
+def shape_names(side: str) -> tuple[str, ...]:
+    """Parameter names of the shifts by direction, in the order of ``LevelFeatures.shapes``."""
+    return tuple(f"{side}_{what}:{group[0]}" for what in ("along", "plane") for group in SHAPED)
 
 
 @cache

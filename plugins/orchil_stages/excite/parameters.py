@@ -1,9 +1,10 @@
 """The trained numbers of the response Hamiltonian, by name, as one flat vector.
 
-Names: ``gap_scale``, ``constant`` (eV); ``occ:7p3``/``virt:7p3`` level shifts (eV) of the p shell of nitrogen
-with coordination number 3; ``occ_charge:7``/``virt_charge:7`` their response to the atomic charge (eV/e);
-``hop:6-7`` relative change of p-p couplings; ``coulomb_*`` and ``exchange_*`` the damped kernels;
-``solvent_*`` the medium.
+Names: ``gap_scale``, ``constant`` (eV); ``occ:7p3``/``virt:7p3`` level shifts (eV) of the p shell of nitrogen with
+coordination number 3; ``occ_charge:7`` their response to the atomic charge (eV/e); ``occ_hetero:7``,
+``occ_hydrogen:7`` and ``occ_around:7`` to the neighbours; ``occ_along:7`` and ``occ_plane:7`` the dependence of p
+levels on their direction against the bonds; ``hop:6-7`` relative change of p-p couplings; ``coulomb_*`` and
+``exchange_*`` the damped kernels; ``solvent_*`` the medium.
 """
 
 from __future__ import annotations
@@ -34,6 +35,12 @@ ELEMENTS = (1, 5, 6, 7, 8, 9, 14, 15, 16, 17, 34, 35, 53)
 """Elements with kernels of their own; others take the untrained hardness."""
 
 CHARGED = (1, 5, 6, 7, 8, 16)
+NEIGHBOURED = (5, 6, 7, 8, 16)
+"""Elements whose p levels know their neighbours."""
+
+SHAPED: tuple[tuple[int, ...], ...] = ((5,), (6,), (7,), (8,), (16, 34), (9, 17, 35, 53))
+"""Groups of elements whose p levels depend on the direction against the bonds."""
+
 _D_SHELLS = (14, 15, 16, 17)
 
 
@@ -70,6 +77,8 @@ def start_values() -> Mapping[str, float]:
     for side in ("occ", "virt"):
         values |= {f"{side}:{kind.name}": 0.0 for kind in level_kinds()}
         values |= {f"{side}_charge:{number}": 0.0 for number in CHARGED}
+        values |= {f"{side}_{what}:{n}": 0.0 for what in ("hetero", "hydrogen", "around") for n in NEIGHBOURED}
+        values |= {f"{side}_{what}:{group[0]}": 0.0 for what in ("along", "plane") for group in SHAPED}
     values |= {f"hop:{one}-{other}": 0.0 for one, other in HOPPING_CLASSES}
     # kernels start as in the simplified Tamm-Dancoff approach (Grimme, J. Chem. Phys. 138, 244104, 2013),
     # with the attraction halved again: GFN2-xTB levels lie as close as those of a functional without exchange

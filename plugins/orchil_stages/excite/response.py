@@ -13,8 +13,9 @@ import numpy as np
 import scipy.linalg
 from orchil_schemas import FloatArray, NotConverged
 
+from .environment import distances
 from .kernels import coulomb_kernel, exchange_kernel
-from .levels import LevelFeatures, corrected_levels, distances, level_features
+from .levels import LevelFeatures, corrected_levels, level_features
 from .parameters import Parameters
 from .window import Window
 

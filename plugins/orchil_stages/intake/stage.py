@@ -24,13 +24,8 @@ from orchil_stages.medium import lookup
 
 
 class IntakeSettings(Frozen):
-    """What a row falls back on, and how large a species may be.
+    """How large a species may be."""
 
-    The engine fills ``medium`` from the brief's ``medium`` unless ``[stage.intake]`` gives one; a ``medium``
-    in the row goes before both.
-    """
-
-    medium: str = Field(default="gas phase", description="medium of rows that name none")
     max_heavy_atoms: int = Field(default=120, ge=1, description="larger species are out of scope")
 
 
@@ -50,11 +45,8 @@ class Intake:
 
     def check_brief(self, brief: Brief) -> list[str]:
         """Problems of the brief that only chemistry can see: a medium that is not known."""
-        named = {"medium": brief.medium}
-        own = brief.stage.get(self.name, {}).get("medium")
-        if isinstance(own, str):
-            named["[stage.intake] medium"] = own
-        return [f"{key}: {problem}" for key, text in named.items() if (problem := _medium_problem(text))]
+        problem = _medium_problem(brief.medium)
+        return [f"medium: {problem}"] if problem else []
 
     def run(self, inputs: Inputs, settings: IntakeSettings, context: Context) -> Iterable[Record]:
         """Identity, notes and medium; BadInput: cannot be read, OutOfScope: is not handled."""
@@ -62,7 +54,7 @@ class Intake:
         from .species import take_species
 
         row = inputs[LibraryRow]
-        medium = lookup(row.medium or settings.medium)
+        medium = lookup(row.medium or "gas phase")
         drawing = read_structure(row.structure, row.format)
         identity, notes = take_species(drawing, max_heavy_atoms=settings.max_heavy_atoms)
         if row.charge is not None and row.charge != identity.charge:

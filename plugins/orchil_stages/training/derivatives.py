@@ -10,7 +10,7 @@ import numpy as np
 from orchil_schemas import FloatArray, IntArray
 
 from orchil_stages.excite.kernels import coulomb_kernel, exchange_kernel, hardness_names
-from orchil_stages.excite.levels import charge_names, hopping_names, level_names
+from orchil_stages.excite.levels import diagonal_names, hopping_names, shape_names
 from orchil_stages.excite.parameters import ELEMENTS, Parameters, index
 from orchil_stages.excite.response import Prepared
 from orchil_stages.excite.solvation import SOLVENT_NAMES
@@ -44,16 +44,20 @@ def _one_electron(gradient: FloatArray, prepared: Prepared, hole: FloatArray, pa
     levels = np.concatenate([-np.diag(hole), np.diag(particle)])
     gradient[index()["gap_scale"]] = levels @ window.energies
     c_occ, c_virt = window.loewdin[:, :o], window.loewdin[:, o:]
-    for side, population in (
-        ("occ", -((c_occ @ hole) * c_occ).sum(axis=1)),
-        ("virt", ((c_virt @ particle) * c_virt).sum(axis=1)),
+    hop, shapes = window.hopping, features.shapes
+    for side, population, shape in (
+        ("occ", -((c_occ @ hole) * c_occ).sum(axis=1), -_traces(shapes[:, :o, :o], hole)),
+        ("virt", ((c_virt @ particle) * c_virt).sum(axis=1), _traces(shapes[:, o:, o:], particle)),
     ):
-        gradient[_places(level_names(side))] = population @ features.kinds
-        gradient[_places(charge_names(side))] = population @ features.charges
-    hop = window.hopping
-    gradient[_places(hopping_names())] = np.einsum("cab,ab->c", hop[:, o:, o:], particle) - np.einsum(
-        "cij,ij->c", hop[:, :o, :o], hole
-    )
+        gradient[_places(diagonal_names(side))] = population @ features.diagonal
+        gradient[_places(shape_names(side))] = shape
+    gradient[_places(hopping_names())] = _traces(hop[:, o:, o:], particle) - _traces(hop[:, :o, :o], hole)
+
+
+def _traces(matrices: FloatArray, density: FloatArray) -> FloatArray:
+    """Expectation value of each symmetric matrix (k, n, n) in a density (n, n)."""
+    values: FloatArray = matrices.reshape(len(matrices), -1) @ density.ravel()
+    return values
 
 
 def _coulomb(gradient: FloatArray, prepared: Prepared, parameters: Parameters, amplitude: FloatArray) -> None:

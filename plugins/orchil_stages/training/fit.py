@@ -30,6 +30,8 @@ _PRIOR = (
     ("virt:", 0.7),
     ("occ_charge:", 1.0),
     ("virt_charge:", 1.0),
+    ("occ_", 0.5),
+    ("virt_", 0.5),
     ("hop:", 0.15),
     ("coulomb_hardness:", 0.3),
     ("exchange_hardness:", 0.3),

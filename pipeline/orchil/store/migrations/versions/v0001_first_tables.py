@@ -66,9 +66,7 @@ def _library() -> None:
         sa.Column("charge", sa.Integer),
         sa.Column("extra", JSON, nullable=False),
         sa.Column("smiles", sa.Text),
-        sa.Column(
-            "medium_used", sa.Text, comment="as intake understood it; the brief's where the row names none"
-        ),
+        sa.Column("medium_used", sa.Text, comment="as intake understood it; the brief's where the row names none"),
         sa.Column("status", sa.Text, nullable=False, index=True),
         sa.Column("failed_stage", sa.Text),
         sa.Column("reason_code", sa.Text),
@@ -84,9 +82,7 @@ def _cache() -> None:
         "record",
         sa.Column("digest", DIGEST, primary_key=True),
         sa.Column("kind", sa.Text, nullable=False),
-        sa.Column(
-            "payload", sa.Text, nullable=False, comment="canonical JSON; text, because the digest is over it"
-        ),
+        sa.Column("payload", sa.Text, nullable=False, comment="canonical JSON; text, because the digest is over it"),
         sa.Column("made_by", DIGEST, comment="digest of the first work that made it"),
     )
     op.create_table(
