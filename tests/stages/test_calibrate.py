@@ -12,7 +12,7 @@ from typing import Any
 
 import numpy as np
 import pytest
-from orchil_schemas import Band, Context, Identity, Inputs, Orbitals, Transitions
+from orchil_schemas import Band, Context, Geometry, Identity, Inputs, Orbitals, Transitions
 from orchil_stages.calibrate import Calibrate
 from orchil_stages.calibrate.features import NAMES, band_features
 from orchil_stages.calibrate.linear import Calibration, load_calibration, trained_calibration
@@ -80,6 +80,15 @@ ORBITALS = Orbitals(
     homo_ev=-9.0, lumo_ev=-7.0, gap_ev=2.0, dipole_debye=np.zeros(3), partial_charges_e=np.zeros(30),
     occupied_window=16, virtual_window=16, overlap_error=0.0, dipole_error_debye=0.0,
 )  # fmt: skip
+
+
+def _geometry(rescued: str | None) -> Geometry:
+    return Geometry(
+        atomic_numbers=[1], positions_angstrom=np.zeros((1, 3)), charge=0, energy_hartree=0.0, gradient_norm=0.0,
+        gradients_used=1, solvation=None, engine="made up", rescued=rescued,
+    )  # fmt: skip
+
+
 DARK_BELOW = _transitions([2.5, 3.0, 3.6], [0.001, 0.4, 0.7])
 
 
@@ -89,10 +98,11 @@ def _band(
     identity: Identity | None = None,
     medium: str = "toluene",
     coverage: float = 0.9,
+    rescued: str | None = None,
 ) -> Band:
     monkeypatch.setattr("orchil_stages.calibrate.linear.trained_calibration", _calibration)
     stage = Calibrate()
-    inputs = Inputs([identity or _identity(), lookup(medium), ORBITALS, transitions])
+    inputs = Inputs([identity or _identity(), lookup(medium), _geometry(rescued), ORBITALS, transitions])
     (band,) = stage.run(inputs, stage.Settings(coverage=coverage), Context(Path(), 1))
     assert isinstance(band, Band)
     return band
@@ -248,6 +258,12 @@ def test_a_dark_candidate_is_cautioned(monkeypatch: pytest.MonkeyPatch) -> None:
     band = _band(monkeypatch, _transitions([2.8, 3.0], [0.001, 0.002]))
     assert band.state == 1
     assert any("no bright state" in caution for caution in band.cautions)
+
+
+def test_a_rescued_relaxation_is_cautioned(monkeypatch: pytest.MonkeyPatch) -> None:
+    assert not _band(monkeypatch).cautions
+    (caution,) = _band(monkeypatch, rescued="held as drawn: C8-O16").cautions
+    assert "held as drawn: C8-O16" in caution
 
 
 def test_a_stranger_is_cautioned(monkeypatch: pytest.MonkeyPatch) -> None:

@@ -4,7 +4,7 @@ surely.
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Iterator
 
 import numpy as np
 from orchil_schemas import (
@@ -14,6 +14,7 @@ from orchil_schemas import (
     Context,
     FloatArray,
     Frozen,
+    Geometry,
     Identity,
     Inputs,
     Medium,
@@ -48,7 +49,7 @@ class Calibrate:
 
     name = "calibrate"
     version = "1"
-    needs: tuple[type[Record], ...] = (Identity, Medium, Orbitals, Transitions)
+    needs: tuple[type[Record], ...] = (Identity, Medium, Geometry, Orbitals, Transitions)
     makes: tuple[type[Record], ...] = (Band,)
     Settings: type[Frozen] = CalibrateSettings
     time_limit_seconds = 30.0
@@ -61,21 +62,20 @@ class Calibrate:
         """One Band."""
         from .features import band_features
 
-        identity, medium, transitions = inputs[Identity], inputs[Medium], inputs[Transitions]
-        features = band_features(identity, medium, inputs[Orbitals], transitions)
-        return (_band(features, identity, medium, transitions, settings.coverage),)
+        features = band_features(inputs[Identity], inputs[Medium], inputs[Orbitals], inputs[Transitions])
+        return (_band(features, inputs, settings.coverage),)
 
 
 _SHORTEST_EV, _LONGEST_EV = 7.0, 0.3
 """Energies outside are held at the limit: 180 nm to 4 micrometres."""
 
 
-def _band(features: FloatArray, identity: Identity, medium: Medium, transitions: Transitions, coverage: float) -> Band:
+def _band(features: FloatArray, inputs: Inputs, coverage: float) -> Band:
     from orchil_stages.excite.bright import first_bright, strongest_state
 
     from .linear import trained_calibration
 
-    models = trained_calibration()
+    models, transitions = trained_calibration(), inputs[Transitions]
     energies, strengths = transitions.energy_ev, transitions.oscillator_strength
     state, strongest = first_bright(energies, strengths), strongest_state(energies, strengths)
     physics = float(energies[state])
@@ -108,7 +108,7 @@ def _band(features: FloatArray, identity: Identity, medium: Medium, transitions:
         emission_low_nm=_nm(physics - emission_low),
         emission_high_nm=_nm(physics - emission_high),
         trust=trust,
-        cautions=_cautions(trust, identity, medium, float(strengths[state])),
+        cautions=tuple(_cautions(trust, inputs, float(strengths[state]))),
     )
 
 
@@ -116,12 +116,13 @@ def _nm(energy_ev: float) -> float:
     return HC_EV_NM / min(max(energy_ev, _LONGEST_EV), _SHORTEST_EV)
 
 
-def _cautions(trust: str, identity: Identity, medium: Medium, strength: float) -> tuple[str, ...]:
-    found = []
+def _cautions(trust: str, inputs: Inputs, strength: float) -> Iterator[str]:
+    identity, rescued = inputs[Identity], inputs[Geometry].rescued
     if trust == "outside":
-        found.append("unlike the dyes the calibration was trained on: take the numbers as a rough guide")
-    if (identity.charge or identity.zwitterion) and medium.solvation is None:
-        found.append("ion or zwitterion in the gas phase: give a medium for a meaningful position")
+        yield "unlike the dyes the calibration was trained on: take the numbers as a rough guide"
+    if (identity.charge or identity.zwitterion) and inputs[Medium].solvation is None:
+        yield "ion or zwitterion in the gas phase: give a medium for a meaningful position"
     if strength < 0.01:
-        found.append("no bright state found: the band is weak and its position uncertain")
-    return tuple(found)
+        yield "no bright state found: the band is weak and its position uncertain"
+    if rescued is not None:
+        yield f"the relaxation needed help ({rescued}): the form may not be the stable one in this medium"
