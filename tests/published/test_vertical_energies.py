@@ -18,7 +18,7 @@ from .facts import table
 
 Predict = Callable[[str, str], Any]
 
-LEAST_SPEARMAN, LARGEST_ERROR_EV = 0.80, 0.45
+LEAST_SPEARMAN, LARGEST_ERROR_EV = {"bright": 0.80, "dark": 0.65}, 0.45
 BRIGHT_STRENGTH = 0.01
 # SMILES do not tell the two geometries apart; cyclazine-like inverted gaps need double excitations
 LEFT_OUT = ("s-indacene, C2h", "s-indacene, D2h", "cyclazine", "heptazine")
@@ -43,7 +43,7 @@ def test_first_singlets_of_the_quest_chromophores(role: str, predict: Predict) -
     found = np.array([_first(predict(smiles, "gas phase").transitions, role) for smiles in wanted["smiles"]])
     published = wanted["energy_ev"].to_numpy()
     assert np.isfinite(found).all()
-    assert spearmanr(found, published).statistic > LEAST_SPEARMAN
+    assert spearmanr(found, published).statistic > LEAST_SPEARMAN[role]
     assert _centred_error(found, published) < LARGEST_ERROR_EV
 
 
