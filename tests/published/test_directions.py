@@ -26,7 +26,7 @@ SYMMETRIC = ["naphthalene", "anthracene", "tetracene", "azulene", "perylene", "B
 FORBIDDEN_DEBYE = 0.15
 WEAK_STRENGTH = 0.01
 VISIBLE_DEBYE = 0.3
-ACCIDENT_EV = 0.02
+ACCIDENT_EV = 0.05
 SYMMETRY_DEG = 1.0
 
 
@@ -46,7 +46,7 @@ def test_every_transition_of_a_symmetric_molecule_lies_on_an_axis(name: str, pre
     found = predict(smiles, "gas phase")
     axes = inertia_axes(found.geometry)
     energies, dipoles = found.transitions.energy_ev, found.transitions.transition_dipole_debye
-    # states that meet by accident share their directions as soon as a relaxed structure is not symmetric to the last digit
+    # states that meet by accident mix as soon as a relaxed structure is not symmetric to the last digit
     apart = np.minimum(np.diff(energies, prepend=-np.inf), np.diff(energies, append=np.inf)) > ACCIDENT_EV
     visible = dipoles[(np.linalg.norm(dipoles, axis=1) > VISIBLE_DEBYE) & apart]
     assert len(visible) >= 2
