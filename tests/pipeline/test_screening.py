@@ -26,7 +26,7 @@ FAILING = {
     "rubbish-1": ("brew", "bad_output", "a str"),
     "nothing-1": ("brew", "bad_output", "did not return brew"),
     "nan-1": ("brew", "bad_output", "JSON"),
-    "invalid-1": ("brew", "bad_output", "strength"),
+    "invalid-1": ("brew", "bad_output", "brew"),
     "never-1": ("brew", "not_converged", "gave up at attempt 2"),
     "unreadable": ("read", "bad_input", "cannot be read"),
 }
