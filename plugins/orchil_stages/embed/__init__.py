@@ -1,5 +1,6 @@
 """Stage `embed`: starting structures in three dimensions by distance geometry and a force field."""
 
-from .stage import Embed, EmbedSettings
+from .settings import EmbedSettings
+from .stage import Embed
 
 __all__ = ["Embed", "EmbedSettings"]

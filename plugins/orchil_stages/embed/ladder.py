@@ -18,7 +18,7 @@ from rdkit import Chem
 from rdkit.Chem import rdDistGeom
 
 from .force_field import rank_by_force_field
-from .stage import EmbedSettings
+from .settings import EmbedSettings
 
 CANDIDATES_FOR_UNDRAWN = 6
 SEEDS_PER_RUNG = 3

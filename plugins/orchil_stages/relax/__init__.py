@@ -1,5 +1,6 @@
 """Stage `relax`: the GFN2-xTB minimum of a starting structure in its medium."""
 
-from .stage import Relax, RelaxSettings
+from .settings import RelaxSettings
+from .stage import Relax
 
 __all__ = ["Relax", "RelaxSettings"]

@@ -29,7 +29,7 @@ from .hold import Walls
 from .internals import build_internals
 from .model_hessian import force_constants
 from .optimiser import EnergyAndGradient, Goal, Minimum, minimise
-from .stage import RelaxSettings
+from .settings import RelaxSettings
 from .topology import Change, check_topology, find_changes
 
 KELVIN_LADDER = (300.0, 1000.0, 5000.0)

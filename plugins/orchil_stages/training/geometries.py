@@ -62,8 +62,7 @@ def relax_one(dye: tuple[str, str]) -> Relaxed:
     """The chain intake, embed, relax for one dye, as a screen runs it but for the looser end of the relaxation."""
     from orchil_stages.embed import Embed
     from orchil_stages.intake import Intake
-    from orchil_stages.relax import Relax
-    from orchil_stages.relax.stage import RelaxSettings
+    from orchil_stages.relax import Relax, RelaxSettings
 
     smiles, medium = dye
     start = time.process_time()
