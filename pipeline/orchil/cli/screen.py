@@ -75,7 +75,7 @@ def _report(store: Store, medium: str, top: int) -> None:
     ranked = ranking[ranking["rank"].notna()].head(top)
     if len(ranked):
         out = console()
-        out.print(ranking_table(ranked.assign(cautions=ranked["cautions"].map(_mark)), medium))
+        out.print(ranking_table(ranked.assign(cautions=ranked["cautions"].map(_mark)), medium, out.width))
     remark(
         f"{row['candidate']}: {row['cautions']}" for row in ranked.to_dict("records") if not missing(row["cautions"])
     )

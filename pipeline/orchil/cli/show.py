@@ -40,7 +40,7 @@ def _show_night(store: Store, screen: ScreenInfo, out: Console) -> None:
     best = store.ranking(limit=5)
     best = best[best["rank"].notna()]
     if len(best):
-        out.print(ranking_table(best.drop(columns="cautions"), screen.brief.medium, title="best so far"))
+        out.print(ranking_table(best.drop(columns="cautions"), screen.brief.medium, out.width, title="best so far"))
 
 
 def _counts(store: Store) -> list[tuple[str, int]]:

@@ -36,6 +36,19 @@ RANKING = {
 }
 """Columns of the ranking table with their headers."""
 
+GIVES_WAY = (
+    "electron_shift_angstrom",
+    "transition_dipole_debye",
+    "emission_max_nm",
+    "oscillator_strength",
+    "long_axis_angle_deg",
+    "medium",
+    "hit_probability",
+    "pick",
+    "molar_absorptivity",
+)
+"""Columns that are left out in a narrow window, the first ones first."""
+
 
 def console(stream: TextIO | None = None) -> Console:
     """A console on ``stream`` (stdout when not given) that leaves text alone."""
@@ -100,11 +113,32 @@ def interval(value: Any, low: Any, high: Any, decimals: int = 0) -> str:
     return NumberText(f"{value:.{decimals}f} ({low:.{decimals}f}-{high:.{decimals}f})")
 
 
-def ranking_table(ranking: pd.DataFrame, medium: str, *, title: str | None = None) -> Table:
-    """The ranking with those columns that hold something; ``medium`` stands where the library names none."""
+def ranking_table(ranking: pd.DataFrame, medium: str, width: int, *, title: str | None = None) -> Table:
+    """The ranking with those columns that hold something and fit into ``width``.
+
+    ``medium`` stands where the library names none. The caption tells how many columns had no room.
+    """
     rows = [ranking_cells(row, medium) for row in ranking.to_dict("records")]
     shown = [key for key in RANKING if any(not missing(row[key]) and row[key] != "" for row in rows)]
+    made, left_out = _ranking(shown, rows, title), 0
+    for key in (key for key in GIVES_WAY if key in shown):
+        if natural_width(made) <= width:
+            break
+        shown.remove(key)
+        made, left_out = _ranking(shown, rows, title), left_out + 1
+    if left_out:
+        made.caption = Text(f"{left_out} more columns in a wider window and in the view `ranking`")
+        made.caption_justify = "left"
+    return made
+
+
+def _ranking(shown: Sequence[str], rows: Sequence[Mapping[str, object]], title: str | None) -> Table:
     return table([RANKING[key] for key in shown], [[row[key] for key in shown] for row in rows], title=title)
+
+
+def natural_width(made: Table) -> int:
+    """Characters a table takes when nothing is folded."""
+    return Console(width=10_000).measure(made).maximum
 
 
 def ranking_cells(row: Mapping[Any, Any], medium: str) -> dict[str, object]:
