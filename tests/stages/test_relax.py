@@ -171,9 +171,10 @@ def test_open_rhodamine_is_held_open_on_the_second_try() -> None:
 
 
 def test_the_same_minimum_as_a_plain_optimiser_with_a_fraction_of_the_gradients() -> None:
-    ase = pytest.importorskip("ase")
-    calculators = pytest.importorskip("ase.calculators.calculator")
-    optimize = pytest.importorskip("ase.optimize")
+    import ase
+    from ase import optimize
+    from ase.calculators import calculator as calculators
+
     start, made = relax("COc1ccc(C=O)cc1", settings=RelaxSettings())
     state = open_ground_state(start.atomic_numbers, 0, None)
 
@@ -192,7 +193,7 @@ def test_the_same_minimum_as_a_plain_optimiser_with_a_fraction_of_the_gradients(
     with optimize.BFGS(atoms, alpha=2.5, logfile=None) as plain:
         plain.run(fmax=4e-4, steps=200)
     assert made.energy_hartree == pytest.approx(atoms.get_potential_energy(), abs=5e-5)
-    assert made.gradient_norm <= 8e-4
+    assert made.gradient_norm <= RelaxSettings().gradient_norm
     assert made.gradients_used <= 14
     assert made.gradients_used < 0.5 * bridge.calls
 

@@ -35,12 +35,16 @@ class Populations:
 
 def populations(states: States, window: Window) -> Populations:
     """Loewdin populations of hole and electron by atom."""
-    hole, electron = _densities(states, window)
+    hole, particle = hole_and_particle(states.amplitudes)
+    o = window.occupied
+    return Populations(_by_atom(window.loewdin[:, :o], hole, window), _by_atom(window.loewdin[:, o:], particle, window))
+
+
+def _by_atom(c: FloatArray, density: FloatArray, window: Window) -> FloatArray:
+    """Diagonal of the density of some orbitals, summed by atom, (states, atoms)."""
     starts = np.flatnonzero(np.diff(window.where.atom, prepend=-1))
-    return Populations(
-        np.add.reduceat(np.einsum("npp->np", hole), starts, axis=1),
-        np.add.reduceat(np.einsum("npp->np", electron), starts, axis=1),
-    )
+    summed: FloatArray = np.add.reduceat(((c @ density) * c).sum(axis=2), starts, axis=1)
+    return summed
 
 
 def _densities(states: States, window: Window) -> tuple[FloatArray, FloatArray]:

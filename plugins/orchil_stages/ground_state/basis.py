@@ -78,7 +78,8 @@ class Integrals:
 def integrals(numbers: IntArray, positions_bohr: FloatArray) -> Integrals:
     """Overlap and dipole integrals from libcint, functions in its order."""
     molecule = _molecule(numbers, positions_bohr)
-    return Integrals(molecule.intor("int1e_ovlp"), molecule.intor("int1e_r"))
+    # hermi=1: only one triangle is computed, the matrices are symmetric
+    return Integrals(molecule.intor("int1e_ovlp", hermi=1), molecule.intor("int1e_r", hermi=1))
 
 
 def _molecule(numbers: IntArray, positions_bohr: FloatArray) -> Any:
