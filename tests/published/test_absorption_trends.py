@@ -139,7 +139,7 @@ def test_cyanines_do_not_converge_where_polyenes_do(predict_many: PredictMany) -
 
 
 def test_la_band_of_acenes_falls_with_every_ring(predict: Predict) -> None:
-    """Grimme and Parac, ChemPhysChem 2003 (from memory, high): 4.66, 3.60, 2.88, 2.37, 2.02 eV, across the
+    """Grimme and Parac, ChemPhysChem 4 (2003) (from memory, high): 4.66, 3.60, 2.88, 2.37, 2.02 eV, across the
     axis.
     """
     members = series("acenes", "vertical La")

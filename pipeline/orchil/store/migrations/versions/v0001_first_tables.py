@@ -29,7 +29,7 @@ def upgrade() -> None:
 
 
 def downgrade() -> None:
-    raise NotImplementedError("there is nothing before the first revision: remove the store instead")
+    raise RuntimeError("there is nothing before the first revision: remove the store instead")
 
 
 def _number(name: str, *, optional: bool = False, index: bool = False) -> sa.Column[Any]:
