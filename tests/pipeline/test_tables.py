@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import pandas as pd
 import pytest
-from orchil.cli.tables import RANKING, natural_width, ranking_table
+from orchil.cli.tables import RANKING, natural_width, ranking_cells, ranking_table
 
 ROW = {
     "rank": 1, "pick": 1, "candidate": "OB-049", "medium": "polyethylene", "score": 0.776, "hit_probability": 0.488,
@@ -28,3 +28,8 @@ def test_a_ranking_fits_its_window(width: int) -> None:
 def test_a_wide_window_shows_everything() -> None:
     made = ranking_table(pd.DataFrame([ROW]), "toluene", 200)
     assert len(made.columns) == len(RANKING)
+
+
+def test_noise_around_zero_is_shown_as_zero() -> None:
+    assert ranking_cells(ROW | {"electron_shift_angstrom": 3.3e-7}, "toluene")["electron_shift_angstrom"] == 0.0
+    assert ranking_cells(ROW, "toluene")["electron_shift_angstrom"] == 3.26

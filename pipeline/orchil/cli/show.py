@@ -11,7 +11,7 @@ from orchil.errors import RequestError
 from orchil.progress import duration
 from orchil.store import CandidatePage, ScreenInfo, Store
 
-from .tables import NumberText, cell_text, console, digits, interval, missing, ranking_table, table
+from .tables import NumberText, cell_text, console, digits, interval, missing, ranking_table, settled, table
 
 
 def run_show(target: str, candidate: str | None) -> None:
@@ -136,7 +136,7 @@ def _spanned(row: Mapping[str, Any], band: Mapping[str, Any], key: str) -> objec
     unit = "_nm" if stem != key else ""
     low, high = band.get(f"{stem}_low{unit}"), band.get(f"{stem}_high{unit}")
     if low is None or high is None:
-        return row[key]
+        return settled(row[key])
     value, least, most = (float(f"{float(number):.3g}") for number in (row[key], low, high))
     return interval(value, least, most)
 

@@ -141,9 +141,14 @@ def natural_width(made: Table) -> int:
     return Console(width=10_000).measure(made).maximum
 
 
+def settled(value: object) -> object:
+    """Zero for what is numerical noise around it: no number of the ranking means anything below 0.0001."""
+    return 0.0 if isinstance(value, float) and abs(value) < 1e-4 else value
+
+
 def ranking_cells(row: Mapping[Any, Any], medium: str) -> dict[str, object]:
     """The cells of one line of the ranking, by column."""
-    cells: dict[str, object] = {key: row.get(key) for key in RANKING}
+    cells: dict[str, object] = {key: settled(row.get(key)) for key in RANKING}
     cells["medium"] = medium if missing(cells["medium"]) else cells["medium"]
     low, high = row.get("absorption_low_nm"), row.get("absorption_high_nm")
     cells["absorption_max_nm"] = interval(row.get("absorption_max_nm"), low, high)
