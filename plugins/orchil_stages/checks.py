@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import numpy as np
-from orchil_schemas import Check, CheckResult, LibraryRow, Transitions
+from orchil_schemas import HC_EV_NM, Check, CheckResult, LibraryRow, Transitions
 
 _WATER_HARTREE = -5.070451
 """GFN2-xTB energy of water at _WATER_BOHR: documentation of xtb-python, interface of the single point."""
@@ -43,7 +43,7 @@ def _anthracene() -> CheckResult:
 
     found = _transitions("c1ccc2cc3ccccc3cc2c1")
     state = first_bright(found.energy_ev, found.oscillator_strength)
-    position = 1239.84 / float(found.energy_ev[state])
+    position = HC_EV_NM / float(found.energy_ev[state])
     angle = float(found.long_axis_angle_deg[state])
     return CheckResult(
         330 < position < 420 and angle > 88, f"{position:.0f} nm, {angle:.0f} degrees from the long axis"
@@ -53,4 +53,4 @@ def _anthracene() -> CheckResult:
 def _azobenzene() -> CheckResult:
     found = _transitions("c1ccc(/N=N/c2ccccc2)cc1")
     lowest = float(found.oscillator_strength[0])
-    return CheckResult(lowest < 1e-3, f"oscillator strength {lowest:.5f} at {1239.84 / found.energy_ev[0]:.0f} nm")
+    return CheckResult(lowest < 1e-3, f"oscillator strength {lowest:.5f} at {HC_EV_NM / found.energy_ev[0]:.0f} nm")

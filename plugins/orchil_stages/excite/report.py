@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 from orchil_schemas import Orbitals, Transitions
 
-from orchil_stages.ground_state import BOHR_ANGSTROM
+from orchil_stages.optics.units import BOHR_ANGSTROM, EA0_DEBYE
 
 from .analysis import angle_to_axis, fixed_sign, leading_pairs, long_axis, pi_share, populations
 from .dipoles import centroid_shift
@@ -14,8 +14,6 @@ from .model import Opened
 from .response import States
 from .window import Window
 
-DEBYE = 2.541746473
-"""One e bohr in debye (CODATA 2018)."""
 METHOD = "singles in a window of GFN2-xTB orbitals, trained one-electron levels and damped Coulomb kernels"
 
 
@@ -27,12 +25,12 @@ def orbitals_record(opened: Opened) -> Orbitals:
         homo_ev=float(homo),
         lumo_ev=float(lumo),
         gap_ev=float(lumo - homo),
-        dipole_debye=opened.wave.dipole * DEBYE,
+        dipole_debye=opened.wave.dipole * EA0_DEBYE,
         partial_charges_e=opened.wave.charges,
         occupied_window=window.occupied,
         virtual_window=window.virtual,
         overlap_error=opened.assertions.overlap_error,
-        dipole_error_debye=opened.assertions.dipole_error * DEBYE,
+        dipole_error_debye=opened.assertions.dipole_error * EA0_DEBYE,
     )
 
 
@@ -47,13 +45,13 @@ def transitions_record(states: States, window: Window) -> Transitions:
         method=METHOD,
         energy_ev=states.energies,
         oscillator_strength=states.strengths,
-        transition_dipole_debye=dipoles * DEBYE,
+        transition_dipole_debye=dipoles * EA0_DEBYE,
         long_axis_angle_deg=angle_to_axis(dipoles, axis),
         electron_shift_angstrom=np.linalg.norm(shift, axis=1) * BOHR_ANGSTROM,
         shift_angstrom=shift * BOHR_ANGSTROM,
         charge_transfer_share=spread.transferred,
         overlap=spread.overlap,
-        dipole_change_debye=-shift * DEBYE,
+        dipole_change_debye=-shift * EA0_DEBYE,
         leading_from=leading.start,
         leading_to=leading.end,
         leading_weight=leading.weight,

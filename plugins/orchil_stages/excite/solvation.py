@@ -12,11 +12,11 @@ from __future__ import annotations
 import numpy as np
 from orchil_schemas import FloatArray, IntArray, Medium
 
-from orchil_stages.ground_state import HARTREE_EV
+from orchil_stages.optics.units import BOHR_ANGSTROM, HARTREE_EV
 
 SOLVENT_NAMES = ("solvent_transition", "solvent_dipole", "solvent_polarisability")
 
-_VOLUME_PER_ATOM = 15.0 / 0.529177210903**3
+_VOLUME_PER_ATOM = 15.0 / BOHR_ANGSTROM**3
 """Cavity volume per heavy atom in bohr^3: 15 cubic angstrom, about the molar volume of organic crystals."""
 
 

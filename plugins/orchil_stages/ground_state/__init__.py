@@ -7,11 +7,14 @@ two give the same numbers to about 1e-6 hartree.
 from __future__ import annotations
 
 import sys
+from collections.abc import Callable
 
 import numpy as np
 from orchil_schemas import BadResult, FloatArray, IntArray, OutOfScope
 
-from .types import BOHR_ANGSTROM, HARTREE_EV, KELVIN_HARTREE, Evaluation, GroundState, Opener, Wavefunction
+from orchil_stages.optics.units import BOHR_ANGSTROM, HARTREE_EV
+
+from .types import KELVIN_HARTREE, Evaluation, GroundState, Request, Wavefunction
 
 __all__ = [
     "BOHR_ANGSTROM",
@@ -64,14 +67,8 @@ def open_ground_state(
         raise OutOfScope("odd number of electrons: only closed-shell species are handled")
     if solvation is not None and solvation not in SOLVATION_SETS:
         raise OutOfScope(f"no solvation parameters named '{solvation}'; known: {', '.join(SOLVATION_SETS)}")
-    return _opener(engine)(
-        numbers,
-        charge,
-        solvation,
-        accuracy=accuracy,
-        temperature_kelvin=temperature_kelvin,
-        max_iterations=max_iterations,
-    )
+    request = Request(np.asarray(numbers), charge, solvation, accuracy, temperature_kelvin, max_iterations)
+    return _calculator(engine)(request)
 
 
 def engine_names() -> tuple[str, ...]:
@@ -90,7 +87,7 @@ def check_result(evaluation: Evaluation, charges: FloatArray, charge: int) -> No
         raise BadResult(f"GFN2-xTB returned impossible atomic charges (sum {charges.sum():.3f}, expected {charge})")
 
 
-def _opener(engine: str | None) -> Opener:
+def _calculator(engine: str | None) -> Callable[[Request], GroundState]:
     name = engine or next(iter(engine_names()), None)
     if name == "xtb":
         from .libxtb import LibxtbGroundState

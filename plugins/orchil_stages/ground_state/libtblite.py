@@ -6,11 +6,11 @@ from importlib.metadata import version
 from typing import Any
 
 import numpy as np
-from orchil_schemas import FloatArray, IntArray, NotConverged
+from orchil_schemas import FloatArray, NotConverged
 from tblite.interface import Calculator
 
 from .order import libcint_order
-from .types import KELVIN_HARTREE, Evaluation, Wavefunction
+from .types import KELVIN_HARTREE, Evaluation, Request, Wavefunction
 
 _SOLVENT_NAMES = {"h2o": "water", "nhexane": "n-hexane"}
 
@@ -20,23 +20,12 @@ class TbliteGroundState:
 
     engine = f"tblite {version('tblite')}"
 
-    def __init__(
-        self,
-        numbers: IntArray,
-        charge: int,
-        solvation: str | None,
-        *,
-        accuracy: float,
-        temperature_kelvin: float,
-        max_iterations: int,
-    ) -> None:
-        self._numbers = np.asarray(numbers)
-        self._charge = charge
-        self._solvation = solvation
+    def __init__(self, request: Request) -> None:
+        self._request = request
         self._settings: dict[str, Any] = {
-            "accuracy": accuracy,
-            "max-iter": max_iterations,
-            "temperature": temperature_kelvin * KELVIN_HARTREE,
+            "accuracy": request.accuracy,
+            "max-iter": request.max_iterations,
+            "temperature": request.temperature_kelvin * KELVIN_HARTREE,
             "verbosity": 0,
         }
         self._calculator: Any = None
@@ -56,17 +45,17 @@ class TbliteGroundState:
         return Evaluation(float(self._results.get("energy")), np.asarray(self._results.get("gradient")))
 
     def _open(self, positions_bohr: FloatArray) -> Any:
-        calculator = Calculator("GFN2-xTB", self._numbers, positions_bohr, float(self._charge), 0)
+        calculator = Calculator("GFN2-xTB", self._request.numbers, positions_bohr, float(self._request.charge), 0)
         for name, value in self._settings.items():
             calculator.set(name, value)
-        if self._solvation is not None:
-            calculator.add("gbsa-solvation", _SOLVENT_NAMES.get(self._solvation, self._solvation))
+        if self._request.solvation is not None:
+            calculator.add("gbsa-solvation", _SOLVENT_NAMES.get(self._request.solvation, self._request.solvation))
         return calculator
 
     def wavefunction(self) -> Wavefunction:
         """Orbitals of the last evaluation, p and d functions brought to the order of libcint."""
         get = self._evaluated().get
-        order, sign = libcint_order(self._numbers, "tblite")
+        order, sign = libcint_order(self._request.numbers, "tblite")
         coefficients = np.asarray(get("orbital-coefficients"))
         return Wavefunction(
             energies=np.asarray(get("orbital-energies")),

@@ -6,13 +6,13 @@ from functools import cached_property
 from importlib.metadata import version
 
 import numpy as np
-from orchil_schemas import FloatArray, IntArray, NotConverged
+from orchil_schemas import FloatArray, NotConverged
 from xtb.interface import Calculator, Param, Results, XTBException
 from xtb.libxtb import VERBOSITY_MUTED
 from xtb.utils import get_solvent
 
 from .order import libcint_order
-from .types import Evaluation, Wavefunction
+from .types import Evaluation, Request, Wavefunction
 
 
 class LibxtbGroundState:
@@ -20,22 +20,8 @@ class LibxtbGroundState:
 
     engine = f"xtb-python {version('xtb')}"
 
-    def __init__(
-        self,
-        numbers: IntArray,
-        charge: int,
-        solvation: str | None,
-        *,
-        accuracy: float,
-        temperature_kelvin: float,
-        max_iterations: int,
-    ) -> None:
-        self._numbers = np.asarray(numbers)
-        self._charge = charge
-        self._solvation = solvation
-        self._accuracy = accuracy
-        self._temperature = temperature_kelvin
-        self._max_iterations = max_iterations
+    def __init__(self, request: Request) -> None:
+        self._request = request
         self._results: Results | None = None
 
     def evaluate(self, positions_bohr: FloatArray) -> Evaluation:
@@ -53,19 +39,19 @@ class LibxtbGroundState:
 
     @cached_property
     def _calculator(self) -> Calculator:
-        calculator = Calculator(Param.GFN2xTB, self._numbers, self._first_positions, self._charge, 0)
+        calculator = Calculator(Param.GFN2xTB, self._request.numbers, self._first_positions, self._request.charge, 0)
         calculator.set_verbosity(VERBOSITY_MUTED)
-        calculator.set_accuracy(self._accuracy)
-        calculator.set_max_iterations(self._max_iterations)
-        calculator.set_electronic_temperature(round(self._temperature))
-        if self._solvation is not None:
-            calculator.set_solvent(get_solvent(self._solvation))
+        calculator.set_accuracy(self._request.accuracy)
+        calculator.set_max_iterations(self._request.max_iterations)
+        calculator.set_electronic_temperature(round(self._request.temperature_kelvin))
+        if self._request.solvation is not None:
+            calculator.set_solvent(get_solvent(self._request.solvation))
         return calculator
 
     def wavefunction(self) -> Wavefunction:
         """Orbitals of the last evaluation, d functions brought to the order of libcint."""
         results = self._evaluated()
-        order, sign = libcint_order(self._numbers, "libxtb")
+        order, sign = libcint_order(self._request.numbers, "libxtb")
         coefficients = np.asarray(results.get_orbital_coefficients())
         return Wavefunction(
             energies=results.get_orbital_eigenvalues(),

@@ -7,10 +7,6 @@ from typing import Protocol
 
 from orchil_schemas import FloatArray, IntArray
 
-BOHR_ANGSTROM = 0.529177210903
-"""Bohr radius in angstrom (CODATA 2018)."""
-HARTREE_EV = 27.211386245988
-"""Hartree in eV (CODATA 2018)."""
 KELVIN_HARTREE = 3.166811563e-6
 """Boltzmann constant in hartree/kelvin (CODATA 2018)."""
 
@@ -53,18 +49,13 @@ class GroundState(Protocol):
         ...
 
 
-class Opener(Protocol):
-    """Makes a calculator; see :func:`orchil_stages.ground_state.open_ground_state`."""
+@dataclass(frozen=True)
+class Request:
+    """What a calculator is made for: species, medium (None: gas phase) and how the field is to be converged."""
 
-    def __call__(
-        self,
-        numbers: IntArray,
-        charge: int,
-        solvation: str | None,
-        *,
-        accuracy: float,
-        temperature_kelvin: float,
-        max_iterations: int,
-    ) -> GroundState:
-        """A calculator for the species; nothing is computed yet."""
-        ...
+    numbers: IntArray
+    charge: int
+    solvation: str | None
+    accuracy: float
+    temperature_kelvin: float
+    max_iterations: int
