@@ -2,6 +2,7 @@
 
 ``units``            constants and conversions
 ``strength``         dipole, oscillator strength, absorptivity, emission rate
+``layers``           what a layer takes out of a light
 ``polarised``        crystals, stretched films, photoselection
 ``transfer``         energy transfer between two dyes
 ``solvatochromism``  shift of bands with the polarity of the medium

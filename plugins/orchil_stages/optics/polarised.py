@@ -132,6 +132,70 @@ def anisotropy_from_polarisation(degree: ArrayLike) -> FloatArray:
     return np.asarray(2 * p / (3 - p))
 
 
+def absorption_tensor(dipoles: ArrayLike, weights: ArrayLike) -> FloatArray:
+    """Sum of w u u^T (3, 3) over directions u of dipoles (states, 3), scaled to trace 1.
+
+    ``ValueError`` when nothing absorbs. A field along e is absorbed in proportion to e^T T e.
+    """
+    weight = np.asarray(weights, dtype=float)
+    vectors = np.asarray(dipoles, dtype=float)
+    seen = (weight > 0) & (np.linalg.norm(vectors, axis=-1) > 0)
+    if not seen.any():
+        raise ValueError("no transition absorbs: weights must not all be zero")
+    units = _unit(vectors[seen])
+    share = weight[seen] / weight[seen].sum()
+    return np.asarray(np.einsum("s,sx,sy->xy", share, units, units))
+
+
+def polariser_curve(
+    tensor: ArrayLike, rotation: ArrayLike, propagation: ArrayLike, reference: ArrayLike, angle_deg: ArrayLike
+) -> FloatArray:
+    """Absorption over the isotropic one against polariser angle, 3 e^T R T R^T e, of a rigid molecule."""
+    turn = np.asarray(rotation, dtype=float)
+    turned = turn @ np.asarray(tensor, dtype=float) @ turn.T
+    fields = polariser_fields(propagation, reference, angle_deg)
+    return np.asarray(3 * np.einsum("nx,xy,ny->n", fields, turned, fields))
+
+
+def malus_extremes(
+    tensor: ArrayLike, rotation: ArrayLike, propagation: ArrayLike, reference: ArrayLike
+) -> tuple[float, float]:
+    """Polariser angle of most absorption (0 to 180) and contrast (max - min)/(max + min) of the curve.
+
+    Three angles fix the curve: it is a + b cos 2x + c sin 2x (Malus). Without contrast the angle is 0.
+    """
+    at_0, at_45, at_90 = polariser_curve(tensor, rotation, propagation, reference, [0.0, 45.0, 90.0])
+    mean, cosine = (at_0 + at_90) / 2, (at_0 - at_90) / 2
+    sine = at_45 - mean
+    swing = float(np.hypot(cosine, sine))
+    if swing < 1e-12:
+        return 0.0, 0.0
+    return float(np.degrees(np.arctan2(sine, cosine)) / 2 % 180), min(swing / float(mean), 1.0)
+
+
+def frame_from_axes(first: ArrayLike, second: ArrayLike) -> FloatArray:
+    """Rotation (3, 3) that turns x onto ``first`` and z as near as possible to ``second``.
+
+    ``ValueError`` when the two are parallel.
+    """
+    x = _unit(first)
+    z = np.asarray(second, dtype=float)
+    z = z - (z @ x) * x
+    if np.linalg.norm(z) < 1e-6 * np.linalg.norm(np.asarray(second, dtype=float)):
+        raise ValueError("the two axes must not be parallel")
+    z = _unit(z)
+    return np.column_stack([x, np.cross(z, x), z])
+
+
+def overlapping_anisotropy(tensor: ArrayLike, emission: ArrayLike) -> float:
+    """Fundamental anisotropy (3 e^T T e - 1)/5 when several transitions absorb and the dipole ``emission`` emits.
+
+    Additivity of anisotropies: Weber, Biochem. J. 51, 145 (1952).
+    """
+    e = _unit(emission)
+    return float((3 * e @ np.asarray(tensor, dtype=float) @ e - 1) / 5)
+
+
 def _unit(vector: ArrayLike) -> FloatArray:
     array = np.asarray(vector, dtype=float)
     length = np.linalg.norm(array, axis=-1, keepdims=True)

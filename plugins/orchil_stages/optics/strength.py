@@ -144,3 +144,32 @@ def strickler_berg(
     band = np.asarray(absorption_cm1, dtype=float)
     area = trapezoid(np.asarray(absorptivity, dtype=float) / band, band)
     return float(STRICKLER_BERG * refractive_index**2 * degeneracy_ratio * area / mean_inverse_cube)
+
+
+def einstein_b(rate_per_s: ArrayLike, energy_ev: ArrayLike, refractive_index: ArrayLike = 1.0) -> FloatArray:
+    """Einstein B (m^3 J^-1 s^-2) of a spontaneous rate A: A c^3/(8 pi h nu^3 n^3), per energy density and frequency.
+
+    Stimulated emission, and absorption between states of equal degeneracy.
+    """
+    frequency = np.asarray(energy_ev, dtype=float) * ELEMENTARY_CHARGE_C / PLANCK_J_S
+    modes = 8 * pi * PLANCK_J_S * (np.asarray(refractive_index, dtype=float) * frequency / LIGHT_M_S) ** 3
+    return np.asarray(np.asarray(rate_per_s, dtype=float) / modes)
+
+
+def absorption_cross_section(absorptivity: ArrayLike) -> FloatArray:
+    """Cross-section (cm^2) of a molar absorptivity (M^-1 cm^-1), 3.824e-21 times it."""
+    return np.asarray(np.asarray(absorptivity, dtype=float) * log(10) * 1000 / AVOGADRO_PER_MOL)
+
+
+def stimulated_emission_cross_section(
+    wavelength_nm: ArrayLike, photons_per_nm: ArrayLike, rate_per_s: ArrayLike, refractive_index: ArrayLike = 1.0
+) -> FloatArray:
+    """Cross-section (cm^2) lambda^4 E(lambda) k/(8 pi n^2 c) of an emission E of area one over wavelength.
+
+    Fuechtbauer-Ladenburg relation as used for dye lasers: Peterson, Tuccio, Snavely, Appl. Phys. Lett. 17, 245
+    (1970).
+    """
+    # nm^4 nm^-1 is 1e-21 cm^3
+    shape = np.asarray(wavelength_nm, dtype=float) ** 4 * np.asarray(photons_per_nm, dtype=float) * 1e-21
+    index = np.asarray(refractive_index, dtype=float)
+    return np.asarray(shape * np.asarray(rate_per_s, dtype=float) / (8 * pi * index**2 * LIGHT_CM_S))

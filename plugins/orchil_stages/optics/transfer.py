@@ -9,7 +9,7 @@ from math import log, pi
 
 import numpy as np
 from numpy.typing import ArrayLike
-from orchil_schemas import FloatArray
+from orchil_schemas import HC_EV_NM, FloatArray
 from scipy.integrate import trapezoid
 
 from .units import AVOGADRO_PER_MOL
@@ -23,6 +23,9 @@ RADIUS6_CM6 = 9000 * log(10) / (128 * pi**5 * AVOGADRO_PER_MOL)
 # J: nm^4 cm^-1 is 1e-28 cm^3; R^6: 1 cm is 1e7 nm
 RADIUS_NM = (RADIUS6_CM6 * 1e-28) ** (1 / 6) * 1e7
 """R0 (nm) per (kappa^2 Phi n^-4 J)^(1/6) with J in M^-1 cm^-1 nm^4, 0.021084."""
+
+
+_FWHM2_PER_VARIANCE = 8 * log(2)
 
 
 def forster_radius_nm(
@@ -57,6 +60,24 @@ def spectral_overlap(wavelength_nm: ArrayLike, emission: ArrayLike, absorptivity
     wavelength, light = np.asarray(wavelength_nm, dtype=float), np.asarray(emission, dtype=float)
     weighted = trapezoid(light * np.asarray(absorptivity, dtype=float) * wavelength**4, wavelength)
     return np.asarray(weighted / trapezoid(light, wavelength))
+
+
+def gaussian_overlap(
+    donor_ev: ArrayLike, donor_width_ev: ArrayLike, acceptor_ev: ArrayLike, acceptor_width_ev: ArrayLike
+) -> FloatArray:
+    """J (nm^4) per acceptor absorptivity at its maximum, both bands Gaussian in energy; arguments broadcast.
+
+    The product of the two is a Gaussian; lambda^4 is expanded about its centre to fourth order in its width. Good to
+    1e-3 while the widths are below a fifth of the energies.
+    """
+    d, a = np.asarray(donor_ev, dtype=float), np.asarray(acceptor_ev, dtype=float)
+    vd = np.asarray(donor_width_ev, dtype=float) ** 2 / _FWHM2_PER_VARIANCE
+    va = np.asarray(acceptor_width_ev, dtype=float) ** 2 / _FWHM2_PER_VARIANCE
+    total = vd + va
+    centre, variance = (d * va + a * vd) / total, vd * va / total
+    spread = variance / centre**2
+    height = np.sqrt(va / total) * np.exp(-((d - a) ** 2) / (2 * total))
+    return np.asarray(height * (HC_EV_NM / centre) ** 4 * (1 + 10 * spread + 105 * spread**2))
 
 
 def kappa2(donor: ArrayLike, acceptor: ArrayLike, separation: ArrayLike) -> FloatArray:

@@ -1,0 +1,5 @@
+"""Stage `redox`: one-electron potentials of ground and excited state."""
+
+from .stage import EstimateRedox, RedoxSettings
+
+__all__ = ["EstimateRedox", "RedoxSettings"]
