@@ -16,7 +16,9 @@ from orchil_schemas import (
     Medium,
     Orbitals,
     Record,
+    StateAnalysis,
     Transitions,
+    Triplets,
 )
 from pydantic import Field
 
@@ -35,9 +37,9 @@ class Excite:
     """Singlet excited states of a relaxed geometry in its medium."""
 
     name = "excite"
-    version = "1"
+    version = "2"
     needs: tuple[type[Record], ...] = (Geometry, Medium)
-    makes: tuple[type[Record], ...] = (Orbitals, Transitions)
+    makes: tuple[type[Record], ...] = (Orbitals, Transitions, StateAnalysis, Triplets)
     Settings: type[Frozen] = ExciteSettings
     time_limit_seconds = 120.0
 
@@ -52,6 +54,8 @@ class Excite:
 
     def run(self, inputs: Inputs, settings: ExciteSettings, context: Context) -> Iterable[Record]:
         """Orbitals and Transitions; NotConverged or BadResult with the reason."""
+        from orchil_stages.electron import state_records
+
         from .model import open_states, solve_states
         from .parameters import trained_parameters
         from .report import orbitals_record, transitions_record
@@ -60,12 +64,14 @@ class Excite:
         geometry, medium = inputs[Geometry], inputs[Medium]
         opened = open_states(geometry, medium, settings.occupied, settings.virtual)
         prepared = prepare(opened.window)
-        states, _ = solve_states(prepared, trained_parameters(), medium, opened.wave.dipole, settings.states)
+        dipole, parameters = opened.wave.dipole, trained_parameters()
+        states, _ = solve_states(prepared, parameters, medium, dipole, settings.states)
         if states.energies[0] <= _LOWEST_EV:
             raise BadResult(
                 f"the first excited state lies at {states.energies[0]:.2f} eV: no sound closed-shell ground state"
             )
-        return orbitals_record(opened), transitions_record(states, opened.window)
+        more = state_records(states, prepared, parameters, medium, dipole)
+        return orbitals_record(opened), transitions_record(states, opened.window), *more
 
 
 _LOWEST_EV = 0.2

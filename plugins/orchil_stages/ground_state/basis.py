@@ -77,12 +77,13 @@ class Integrals:
 
 def integrals(numbers: IntArray, positions_bohr: FloatArray) -> Integrals:
     """Overlap and dipole integrals from libcint, functions in its order."""
-    molecule = _molecule(numbers, positions_bohr)
+    molecule = gaussian_molecule(numbers, positions_bohr)
     # hermi=1: only one triangle is computed, the matrices are symmetric
     return Integrals(molecule.intor("int1e_ovlp", hermi=1), molecule.intor("int1e_r", hermi=1))
 
 
-def _molecule(numbers: IntArray, positions_bohr: FloatArray) -> Any:
+def gaussian_molecule(numbers: IntArray, positions_bohr: FloatArray) -> Any:
+    """The valence basis on the atoms as a PySCF molecule, functions in the order of libcint."""
     from pyscf import gto
 
     molecule = gto.Mole()
