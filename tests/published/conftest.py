@@ -11,7 +11,7 @@ import pytest
 from tests.prediction import Prediction, Predictor
 
 ROOM = Path(orchil_stages.__file__).parent
-TRAINED = tuple(ROOM / stage / "trained.json" for stage in ("excite", "calibrate"))
+TRAINED = (ROOM / "excite" / "trained.json", ROOM / "calibrate" / "trained" / "numbers.json")
 
 
 @pytest.fixture(scope="session")

@@ -16,6 +16,9 @@ TABLES = (
     "quest_singlets",
     "dark_states",
     "transition_directions",
+    "triplets",
+    "radiative_rates",
+    "solvent_slopes",
     *SERIES,
 )
 TEXT_COLUMNS = ("name", "medium", "note", "bright_state", "label")

@@ -6,12 +6,15 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+from orchil_stages.calibrate.kernel import Bands, covariance
 from orchil_stages.excite.parameters import Parameters, index, names, start_parameters
-from orchil_stages.training.calibration import conformal, ridge_fit
 from orchil_stages.training.choice import rows_for_training
 from orchil_stages.training.dataset import is_test, media_of_dyes, read_measured, scaffold
 from orchil_stages.training.fit import Evaluated, make_problem, train
+from orchil_stages.training.gaussian import pseudo_inputs, robust_weights
+from orchil_stages.training.learning import conformal, error_size
 from orchil_stages.training.tables import errors, linear_fit
+from scipy.sparse import csr_array
 
 HEADER = (
     "tag,smiles,solvent_smiles,absorption_max_nm,emission_max_nm,lifetime_ns,quantum_yield,log10_molar_absorptivity,"
@@ -106,14 +109,60 @@ def test_conformal_quantiles_cover_what_they_promise() -> None:
     assert np.mean(covered) == pytest.approx(0.9, abs=0.05)
 
 
-def test_ridge_is_not_led_away_by_outliers() -> None:
+def _line_of_bands(count: int, generator: np.random.Generator) -> Bands:
+    """Bands that differ in one feature only."""
+    features = np.sort(generator.uniform(-2.0, 2.0, size=(count, 1)), axis=0)
+    return Bands(csr_array(np.ones((count, 1))), features, np.ones(count))
+
+
+def test_the_process_agrees_with_an_independent_library_on_clean_data() -> None:
+    """Every row a pseudo-input: the exact Gaussian process, as scikit-learn solves it."""
+    from sklearn.gaussian_process import GaussianProcessRegressor
+    from sklearn.gaussian_process.kernels import RBF
+
+    generator = np.random.default_rng(4)
+    bands, new = _line_of_bands(60, generator), _line_of_bands(25, generator)
+    target = np.sin(2.0 * bands.features[:, 0])
+    weights = robust_weights(covariance(bands, bands), covariance(bands, bands), 1e-3, target)
+    ours = covariance(new, bands) @ weights
+    reference = GaussianProcessRegressor(RBF(1.0), alpha=1e-3, optimizer=None).fit(bands.features, target)
+    assert ours == pytest.approx(reference.predict(new.features), abs=0.02)
+
+
+def test_the_process_is_not_led_away_by_wrong_rows() -> None:
     generator = np.random.default_rng(5)
-    x = generator.normal(size=(300, 3))
-    y = x @ np.array([1.0, -2.0, 0.5]) + 0.3 + 0.05 * generator.normal(size=300)
-    y[:15] += 20.0
-    intercept, slope = ridge_fit(x, y, 0.3)
-    assert intercept == pytest.approx(0.3, abs=0.1)
-    assert slope == pytest.approx([1.0, -2.0, 0.5], abs=0.1)
+    bands = _line_of_bands(400, generator)
+    truth = np.sin(2.0 * bands.features[:, 0])
+    target = truth + 0.05 * generator.normal(size=400)
+    target[::20] += 3.0
+    points = pseudo_inputs(bands, 40, seed=1)
+    cross = covariance(bands, points)
+    found = cross @ robust_weights(cross, covariance(points, points), 0.05, target)
+    assert np.abs(found - truth).mean() < 0.06
+
+
+def test_pseudo_inputs_are_fewer_than_the_rows_and_are_centres() -> None:
+    generator = np.random.default_rng(6)
+    bands = _line_of_bands(300, generator)
+    points = pseudo_inputs(bands, 10, seed=1)
+    assert len(points) <= 10
+    assert not set(np.round(points.features[:, 0], 6)) & set(np.round(bands.features[:, 0], 6))
+    assert np.asarray((points.environments.multiply(points.environments)).sum(axis=1)) == pytest.approx(1.0)
+
+
+def test_the_expected_size_follows_errors_that_grow() -> None:
+    """Errors of ten times the size at one end: the intervals there are several times wider, and cover at both ends."""
+    generator = np.random.default_rng(8)
+    place = generator.uniform(0.0, 1.0, size=4000)
+    features = ((place - 0.5) * 12.0**0.5)[:, None]
+    residual = 0.5 * 10.0**place * generator.normal(size=4000)
+    size = error_size(residual, features)
+    low, high = size.interval(features, 0.9)
+    inside = (residual >= low) & (residual <= high)
+    for end in (place < 0.2, place > 0.8):
+        assert inside[end].mean() == pytest.approx(0.9, abs=0.04)
+    edges = [high[features[:, 0].argmin()], high[features[:, 0].argmax()]]
+    assert edges[1] > 4.0 * edges[0]
 
 
 def test_errors_and_linear_fit_agree_with_hand_made_numbers() -> None:

@@ -5,6 +5,7 @@ surely.
 from __future__ import annotations
 
 from collections.abc import Iterable, Iterator
+from typing import TYPE_CHECKING
 
 import numpy as np
 from orchil_schemas import (
@@ -12,7 +13,6 @@ from orchil_schemas import (
     Availability,
     Band,
     Context,
-    FloatArray,
     Frozen,
     Geometry,
     Identity,
@@ -20,14 +20,17 @@ from orchil_schemas import (
     Medium,
     Orbitals,
     Record,
+    StateAnalysis,
     Transitions,
 )
 from pydantic import Field, field_validator
 
 from orchil_stages.installed import availability
 
-COVERAGES = (0.5, 0.8, 0.9, 0.95)
-"""Probabilities for which intervals are trained."""
+from .coverages import COVERAGES
+
+if TYPE_CHECKING:
+    from .reading import Reading
 
 
 class CalibrateSettings(Frozen):
@@ -48,68 +51,73 @@ class Calibrate:
     """Band on the measured scale from the computed states."""
 
     name = "calibrate"
-    version = "1"
-    needs: tuple[type[Record], ...] = (Identity, Medium, Geometry, Orbitals, Transitions)
+    version = "2"
+    needs: tuple[type[Record], ...] = (Identity, Medium, Geometry, Orbitals, Transitions, StateAnalysis)
     makes: tuple[type[Record], ...] = (Band,)
     Settings: type[Frozen] = CalibrateSettings
     time_limit_seconds = 30.0
 
     def found(self) -> Availability:
-        """Needs nothing beyond NumPy."""
-        return availability("numpy")
+        """Are RDKit (for environments) and SciPy installed?"""
+        return availability("rdkit", "scipy")
 
     def run(self, inputs: Inputs, settings: CalibrateSettings, context: Context) -> Iterable[Record]:
-        """One Band."""
-        from .features import band_features
-
-        features = band_features(inputs[Identity], inputs[Medium], inputs[Orbitals], inputs[Transitions])
-        return (_band(features, inputs, settings.coverage),)
+        """One Band; BadResult when structure and states do not belong together."""
+        return (_band(inputs, settings.coverage),)
 
 
 _SHORTEST_EV, _LONGEST_EV = 7.0, 0.3
 """Energies outside are held at the limit: 180 nm to 4 micrometres."""
 
 
-def _band(features: FloatArray, inputs: Inputs, coverage: float) -> Band:
+def _band(inputs: Inputs, coverage: float) -> Band:
     from orchil_stages.excite.bright import first_bright, strongest_state
 
-    from .linear import trained_calibration
+    from .reading import read_band
 
-    models, transitions = trained_calibration(), inputs[Transitions]
+    transitions = inputs[Transitions]
     energies, strengths = transitions.energy_ev, transitions.oscillator_strength
     state, strongest = first_bright(energies, strengths), strongest_state(energies, strengths)
     physics = float(energies[state])
-    correction = float(models.position.predict(features))
-    low, high = (float(edge) for edge in models.position.interval(features, coverage))
-    position = _nm(physics + correction)
-    stokes = float(models.stokes.predict(features))
-    emission_low, emission_high = (float(edge) for edge in models.stokes.interval(features, coverage))
-    epsilon_low, epsilon_high = (float(edge) for edge in models.absorptivity.interval(features, coverage))
-    trust = models.trust(features)
+    read = read_band(inputs, state, coverage)
+    position, absorptivity, width = read["position"], read["absorptivity"], read["width"]
     return Band(
         state=state,
         first_bright_state=state,
         strongest_state=strongest,
         coverage=coverage,
-        absorption_max_nm=position,
-        absorption_low_nm=_nm(physics + high),
-        absorption_high_nm=_nm(physics + low),
+        absorption_max_nm=_nm(physics + position.value),
+        absorption_low_nm=_nm(physics + position.high),
+        absorption_high_nm=_nm(physics + position.low),
         physics_absorption_max_nm=_nm(physics),
-        strongest_absorption_max_nm=_nm(float(energies[strongest]) + correction),
-        molar_absorptivity=10.0 ** float(models.absorptivity.predict(features)),
-        molar_absorptivity_low=10.0**epsilon_low,
-        molar_absorptivity_high=10.0**epsilon_high,
-        width_ev=10.0 ** float(models.width.predict(features)),
+        strongest_absorption_max_nm=_nm(float(energies[strongest]) + position.value),
+        molar_absorptivity=10.0**absorptivity.value,
+        molar_absorptivity_low=10.0**absorptivity.low,
+        molar_absorptivity_high=10.0**absorptivity.high,
+        width_ev=10.0**width.value,
         oscillator_strength=float(strengths[state]),
         transition_dipole_debye=float(np.linalg.norm(transitions.transition_dipole_debye[state])),
         long_axis_angle_deg=float(transitions.long_axis_angle_deg[state]),
         electron_shift_angstrom=float(transitions.electron_shift_angstrom[state]),
-        emission_max_nm=_nm(physics - stokes),
-        emission_low_nm=_nm(physics - emission_low),
-        emission_high_nm=_nm(physics - emission_high),
-        trust=trust,
-        cautions=tuple(_cautions(trust, inputs, float(strengths[state]))),
+        trust=read.trust,
+        cautions=(*read.cautions, *_cautions(read.trust, inputs, float(strengths[state]))),
+        **_emission(read, physics),
     )
+
+
+def _emission(read: Reading, physics: float) -> dict[str, float]:
+    """The fields of the emission, where the reading tells of it."""
+    if "stokes" not in read.values:
+        return {}
+    stokes, strength = read["stokes"], read["emission_strength"]
+    return {
+        "emission_max_nm": _nm(physics - stokes.value),
+        "emission_low_nm": _nm(physics - stokes.low),
+        "emission_high_nm": _nm(physics - stokes.high),
+        "emission_strength": 10.0**strength.value,
+        "emission_strength_low": 10.0**strength.low,
+        "emission_strength_high": 10.0**strength.high,
+    }
 
 
 def _nm(energy_ev: float) -> float:

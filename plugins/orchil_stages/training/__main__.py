@@ -1,9 +1,11 @@
 """``python -m orchil_stages.training``: make the trained numbers from the data folder.
 
     relax   DATA CACHE   relaxed geometries of the measured dyes (resumable; both cores)
-    fit     DATA CACHE   train the response Hamiltonian on the training scaffolds, write trained.json
-    calibrate DATA CACHE fit position, absorptivity, width and Stokes shift, write the calibration
-    table   DATA CACHE   errors on scaffolds never used in training, beside the baselines
+    fit     DATA CACHE   train the response Hamiltonian on all dyes (trained.json) and without each fold
+    calibrate DATA CACHE train the learned correction and its intervals, write its files
+    anchor  DATA CACHE   fit how the errors of relatives go together, write the numbers of the anchor stage
+    solvents DATA CACHE  fit the effective change of dipole to measured solvent shifts, write its numbers
+    bench   DATA CACHE   errors on unseen scaffolds, five folds, beside the baselines
 
 DATA is the folder with the measured dyes and TD-DFT energies, CACHE a folder outside the repository.
 """
@@ -14,7 +16,7 @@ import argparse
 import time
 from pathlib import Path
 
-from . import benchmark, calibration, hamiltonian
+from . import hamiltonian, solvents, steps
 from .choice import dyes_in_order
 from .dataset import media_of_dyes, read_measured
 from .geometries import relax_dyes
@@ -23,14 +25,16 @@ from .geometries import relax_dyes
 def main() -> None:
     """Read the command line and run one step."""
     parser = argparse.ArgumentParser(prog="python -m orchil_stages.training", description=__doc__)
-    steps = parser.add_subparsers(required=True)
+    commands = parser.add_subparsers(required=True)
     for name, run in (
         ("relax", relax),
         ("fit", hamiltonian.fit),
-        ("calibrate", calibration.calibrate),
-        ("table", benchmark.table),
+        ("calibrate", steps.calibrate),
+        ("anchor", steps.anchor),
+        ("solvents", solvents.fit),
+        ("bench", steps.bench),
     ):
-        step = steps.add_parser(name)
+        step = commands.add_parser(name)
         step.add_argument("data", type=Path)
         step.add_argument("cache", type=Path)
         step.add_argument("--workers", type=int, default=2)

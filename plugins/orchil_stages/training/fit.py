@@ -176,11 +176,15 @@ def train(
     start: FloatArray,
     iterations: int,
     report: Callable[[int, float, FloatArray, FloatArray], None],
+    *,
+    at_start: list[Evaluated] | None = None,
 ) -> FloatArray:
-    """Damped Gauss-Newton; ``report(iteration, objective, energies, vector)`` after each accepted step."""
+    """Damped Gauss-Newton; ``report(iteration, objective, energies, vector)`` after each accepted step.
+
+    ``at_start`` spares the evaluation at ``start`` where it is known.
+    """
     vector = start
-    done = evaluate(vector)
-    energies, jacobian = _stacked(done)
+    energies, jacobian = _stacked(at_start if at_start is not None else evaluate(vector))
     best = problem.objective(energies, vector)
     report(0, best, energies, vector)
     damping = 1.0
