@@ -71,6 +71,26 @@ def test_bodipy_goes_to_uff_and_keeps_a_tetrahedral_boron() -> None:
     assert length(BODIPY, "[#5]~[#7]", made) == pytest.approx(1.545, abs=0.15)
 
 
+@pytest.mark.parametrize("seed", [1, 2, 3])
+def test_the_rings_of_trans_azobenzene_lie_near_its_plane(seed: int) -> None:
+    """Flat within some 20 degrees: Traetteberg, Hilmo, Hagen, J. Mol. Struct. 39, 231 (1977; from memory, medium)."""
+    smiles = "c1ccc(/N=N/c2ccccc2)cc1"
+    molecule = molecule_of(smiles, embed_structures(smiles, PLAIN, seed=seed))
+    torsions = molecule.GetSubstructMatches(Chem.MolFromSmarts("cc-N=N"), uniquify=False)
+    angles = [rdMolTransforms.GetDihedralDeg(molecule.GetConformer(), *atoms) for atoms in torsions]
+    assert len(angles) == 4
+    assert max(min(abs(angle), 180 - abs(angle)) for angle in angles) < 30.0
+
+
+def test_the_rings_of_cis_azobenzene_are_left_to_the_force_field() -> None:
+    """They cannot be flat: 53 degrees in the crystal (Mostad, Roemming, Acta Chem. Scand. 25, 3561, 1971; memory)."""
+    smiles = "c1ccc(/N=N\\c2ccccc2)cc1"
+    molecule = molecule_of(smiles, embed_structures(smiles, PLAIN, seed=1))
+    torsions = molecule.GetSubstructMatches(Chem.MolFromSmarts("cc-N=N"), uniquify=False)
+    angles = [rdMolTransforms.GetDihedralDeg(molecule.GetConformer(), *atoms) for atoms in torsions]
+    assert min(min(abs(angle), 180 - abs(angle)) for angle in angles) > 30.0
+
+
 def test_selenophene_has_no_force_field_and_still_a_structure() -> None:
     # Microwave structure: C-Se 1.855 angstrom (Brown, Burden, Godfrey, J. Mol. Spectrosc. 25, 415, 1968;
     # from memory)

@@ -12,7 +12,11 @@ from typing import Any
 from rdkit import Chem
 from rdkit.Chem import rdForceFieldHelpers as helpers
 
+from .azo import flat_torsions
+
 SCREENING_DIELECTRIC = 80.0
+AZO_FORCE = 100.0
+"""Of the torsions that are held, kcal/mol per squared radian."""
 
 
 def rank_by_force_field(molecule: Chem.Mol, steps: int) -> tuple[str, list[int]]:
@@ -21,7 +25,7 @@ def rank_by_force_field(molecule: Chem.Mol, steps: int) -> tuple[str, list[int]]
     name, make = _choose(molecule)
     if make is None:
         return name, ids
-    energies = {i: _minimise(make(molecule, i), steps) for i in ids}
+    energies = {i: _minimise(_with_flat_azo(molecule, i, name, make(molecule, i)), steps) for i in ids}
     return name, sorted(ids, key=energies.__getitem__)
 
 
@@ -44,9 +48,16 @@ def _uff(molecule: Chem.Mol, conformer: int) -> Any:
     return helpers.UFFGetMoleculeForceField(molecule, confId=conformer)
 
 
+def _with_flat_azo(molecule: Chem.Mol, conformer: int, name: str, field: Any) -> Any:
+    field.Initialize()
+    hold = field.MMFFAddTorsionConstraint if name == "MMFF94" else field.UFFAddTorsionConstraint
+    for atoms, low, high in flat_torsions(molecule, conformer):
+        hold(*atoms, False, low, high, AZO_FORCE)
+    return field
+
+
 def _minimise(field: Any, steps: int) -> float:
     """Energy in kcal/mol after at most ``steps`` steps."""
-    field.Initialize()
     if steps:
         field.Minimize(maxIts=steps)
     return float(field.CalcEnergy())

@@ -14,7 +14,7 @@ class Embed:
     """Makes three-dimensional starting structures from the canonical SMILES; see :mod:`.ladder`."""
 
     name = "embed"
-    version = "2"
+    version = "3"
     needs: tuple[type[Record], ...] = (Identity,)
     makes: tuple[type[Record], ...] = (Conformers,)
     Settings: type[Frozen] = EmbedSettings

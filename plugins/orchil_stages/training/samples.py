@@ -74,8 +74,9 @@ def make_samples(job: Job, cache: Path, sets: Sequence[Parameters]) -> tuple[Sam
     if row is None:
         return None
     identity = _identity(job.measured)
-    made = [_sample(row, identity, parameters) for parameters in sets]
-    samples = tuple(sample for sample in made if sample is not None)
+    distinct = {parameters.vector.tobytes(): parameters for parameters in sets}
+    made = {key: _sample(row, identity, parameters) for key, parameters in distinct.items()}
+    samples = tuple(s for p in sets if (s := made[p.vector.tobytes()]) is not None)
     return samples if len(samples) == len(sets) else None
 
 
