@@ -31,7 +31,9 @@ from orchil_schemas import (
     Record,
     Stage,
     StageError,
+    StateAnalysis,
     Transitions,
+    Triplets,
     all_records,
     content_digest,
 )
@@ -50,7 +52,7 @@ SOURCES = {
     "intake": ("intake", "medium"),
     "embed": ("embed",),
     "relax": ("relax", "ground_state"),
-    "excite": ("excite", "ground_state"),
+    "excite": ("excite", "electron", "darkness", "ground_state"),
     "calibrate": ("calibrate", "medium"),
 }
 """Folders whose code and data decide what a stage makes: no forgotten version bump may hide a change."""
@@ -101,6 +103,14 @@ class Prediction:
     @property
     def transitions(self) -> Transitions:
         return _the(Transitions, self._excited)
+
+    @property
+    def analysis(self) -> StateAnalysis:
+        return _the(StateAnalysis, self._excited)
+
+    @property
+    def triplets(self) -> Triplets:
+        return _the(Triplets, self._excited)
 
     @property
     def band(self) -> Band:

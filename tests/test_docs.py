@@ -12,9 +12,9 @@ import pytest
 import typer
 from orchil import briefs, cli, hookspecs
 from orchil.chain import resolve
-from orchil.registry import Registry, load_by_name
+from orchil.registry import Registry
 from orchil.store import Store
-from orchil_schemas import Context, Identity, Inputs, StageError, all_records
+from orchil_schemas import StageError, all_records
 from orchil_stages.medium import known_media
 
 ROOT = Path(__file__).parents[1]
@@ -135,7 +135,7 @@ def test_there_are_enough_questions():
 
 @pytest.mark.parametrize("sql", [*SQL, *re.findall(r'orchil query \S+ "([^"]+)"', README)])
 def test_every_question_runs(store, sql):
-    assert len(store.query(sql).columns)
+    assert len(store.query(sql, (), REGISTRY.offers.sql_functions.values()).columns)
 
 
 def test_every_column_of_the_ranking_is_explained(store):
@@ -179,47 +179,3 @@ def test_every_package_and_every_module_of_the_engine_has_a_line():
             assert f"| `{name}`" in DEVELOPERS, name
     for module in (*(ROOT / ROOMS[0]).glob("*.py"), *(ROOT / ROOMS[2]).glob("*.py")):
         assert module.stem == "__init__" or f"`{module.name}`" in DEVELOPERS, module.name
-
-
-@pytest.fixture
-def example(tmp_path):
-    (code,) = fences(DEVELOPERS, "python")
-    path = tmp_path / "stiffness.py"
-    path.write_text(code, encoding="utf-8")
-    registry = Registry.load()
-    registry.register(load_by_name(str(path)), "example")
-    assert registry.problems == []
-    return registry
-
-
-def test_the_example_stage_can_be_wanted(example, tmp_path):
-    want = next(text for text in fences(DEVELOPERS, "toml") if "[[want]]" in text)
-    path = tmp_path / "brief.toml"
-    path.write_text(whole(want), encoding="utf-8")
-    steps = resolve(example, briefs.load(path)).steps
-    assert "stiffness" in [step.stage.name for step in steps if step.essential]
-
-
-# Biphenyl turns about the bond between its rings, naphthalene about none: a rotatable bond is a single bond
-# outside rings between atoms that are not terminal (Veber et al., J. Med. Chem. 45, 2615, 2002; from memory).
-@pytest.mark.parametrize(("smiles", "bonds"), [("c1ccc(-c2ccccc2)cc1", 1), ("c1ccc2ccccc2c1", 0)])
-def test_the_example_stage_runs(example, tmp_path, smiles, bonds):
-    stage = example.stages["stiffness"]
-    identity = Identity(
-        smiles=smiles,
-        inchikey="",
-        fixed_hydrogen_layer="",
-        charge=0,
-        formula="",
-        heavy_atoms=12,
-        atoms=22,
-        molar_mass_g_mol=154.2,
-        zwitterion=False,
-    )
-    (made,) = stage.run(Inputs([identity]), stage.Settings(), Context(tmp_path, seed=1))
-    assert [(q.name, q.value) for q in made.quantities()] == [("rotatable_bonds", bonds)]
-
-
-def test_the_example_check_passes(example):
-    (check,) = [check for check in example.checks if check.name == "rotatable bonds"]
-    assert check.run().ok

@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import heapq
 import platform
-from collections.abc import Iterable, Mapping
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
 from typing import Protocol
 
@@ -18,9 +18,12 @@ from pydantic import ValidationError
 from .chain import Chain, Kind, Step
 from .digests import work_digest, work_seed
 from .messages import Reply, Task
+from .promise import Glance
 from .store import AttemptRow, Batch, CandidateOutcome, CandidateState, WorkRow
 
 ATTEMPTS = 2
+DISTURBANCES = 5
+"""So often work begins again whose worker was killed from outside, before that counts as its own failure."""
 HOST = platform.node()
 
 
@@ -63,10 +66,16 @@ class Failure:
 
 @dataclass(eq=False, slots=True)
 class Active:
-    """A candidate under way: what it has, which steps it has not begun, how many it waits for."""
+    """A candidate under way: what it has, which steps it has not begun, how many it waits for.
+
+    ``place`` counts candidates as they came in. One at which the board only glances gets no outcome; ``glance`` names
+    the quantities to look at.
+    """
 
     id: int
     row_number: int
+    place: int
+    glance: frozenset[str] | None
     made: dict[Kind, Made]
     todo: list[Step]
     waiting: int = 0
@@ -84,14 +93,15 @@ class Work:
     seed: int
     shared_by: list[Active]
     attempt: int = 1
+    disturbed: int = 0
 
     def __lt__(self, other: Work) -> bool:
         return self.urgency < other.urgency
 
     @property
     def urgency(self) -> tuple[int, int]:
-        """Late steps first, then rows in order."""
-        return -self.step.position, self.shared_by[0].row_number
+        """Late steps first, then candidates as they came in."""
+        return -self.step.position, self.shared_by[0].place
 
     def task(self) -> Task:
         """The work as it is sent to a worker."""
@@ -114,7 +124,9 @@ class Board:
         self._failed: dict[str, Failure] = {}
         self._first: dict[str, tuple[int, int]] = {}
         self._settled: set[str] = set()
+        self._admitted = 0
         self.batch = Batch()
+        self.glances: list[Glance] = []
         self.done = 0
         self.failed = 0
 
@@ -134,15 +146,30 @@ class Board:
         for state, row in rows:
             digests: dict[Kind, str] = {LibraryRow: row.digest}
             for step in steps:
-                made = known.get(works[row.digest, step.position], ())
-                digests.update(zip(step.stage.makes, made, strict=False))
+                made = zip(step.stage.makes, known.get(works[row.digest, step.position], ()), strict=False)
+                digests.update((kind, digest) for kind, digest in made if kind in step.gives)
             self._note_species(digests, (state.row_number, state.id), settled=True)
 
     def admit(self, candidates: Iterable[tuple[CandidateState, LibraryRow]]) -> None:
         """Take candidates on and find out what they need."""
+        self._take_on(candidates, self._chain.steps, None)
+
+    def glance(
+        self, candidates: Iterable[tuple[CandidateState, LibraryRow]], steps: Sequence[Step], wanted: frozenset[str]
+    ) -> None:
+        """Run these steps alone and leave wanted quantities in :attr:`glances`; the work is kept, no outcome is."""
+        self._take_on(candidates, steps, wanted)
+
+    def _take_on(
+        self,
+        candidates: Iterable[tuple[CandidateState, LibraryRow]],
+        steps: Sequence[Step],
+        glance: frozenset[str] | None,
+    ) -> None:
         for state, row in candidates:
-            active = Active(state.id, state.row_number, {LibraryRow: self._row(row)}, list(self._chain.steps))
-            self._advance(active)
+            self._admitted += 1
+            made: dict[Kind, Made] = {LibraryRow: self._row(row)}
+            self._advance(Active(state.id, state.row_number, self._admitted, glance, made, list(steps)))
         self._resolve()
 
     def next_task(self) -> Task:
@@ -159,6 +186,9 @@ class Board:
         if reply.ok:
             self._keep(work, made)
             self._complete(work, made)
+        elif reply.disturbed and work.disturbed < DISTURBANCES:
+            work.disturbed += 1
+            heapq.heappush(self._ready, work)
         elif reply.recoverable and work.attempt < ATTEMPTS:
             work.attempt += 1
             heapq.heappush(self._ready, work)
@@ -210,7 +240,7 @@ class Board:
         del self._works[work.digest]
         for active in work.shared_by:
             active.waiting -= 1
-            active.made.update((type(one.record), one) for one in made)
+            active.made.update((type(one.record), one) for one in made if type(one.record) in work.step.gives)
             self._advance(active)
 
     def _fail(self, work: Work, failure: Failure) -> None:
@@ -281,6 +311,10 @@ class Board:
     def _finish(self, active: Active) -> None:
         root = self._root_cause(active)
         essential = root is not None and self._chain.steps[root].essential
+        if active.glance is not None:
+            records = [one.record for one in active.made.values()]
+            self.glances.append(Glance.at(active.id, records, active.glance, failed=essential))
+            return
         failure = active.failures[root] if root is not None else None
         self.batch.links += [(active.id, one.record) for kind, one in active.made.items() if kind is not LibraryRow]
         self.batch.outcomes.append(

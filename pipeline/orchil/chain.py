@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator, Sequence
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from functools import cached_property
 from typing import Any
 
 from orchil_schemas import (
+    Anchor,
     Brief,
     Frozen,
     LibraryRow,
@@ -20,8 +21,10 @@ from orchil_schemas import (
 )
 from pydantic import ValidationError
 
+from .asked import asked_for
 from .briefs import sentences, suggestion
 from .errors import RequestError
+from .makers import kept, settle
 from .registry import Registry, availability
 
 Kind = type[Record]
@@ -31,8 +34,8 @@ Kind = type[Record]
 class Step:
     """One per-candidate stage with its checked settings; ``position`` counts along the chain.
 
-    An ``essential`` step leads to a quantity that the brief or a library stage wants: where it fails, the
-    candidate has failed.
+    ``gives`` are those kinds among what the stage makes that are taken from it. An ``essential`` step leads to a
+    quantity that the brief or a library stage wants: where it fails, the candidate has failed.
     """
 
     stage: Stage
@@ -40,6 +43,7 @@ class Step:
     settings_json: str
     position: int
     essential: bool
+    gives: tuple[Kind, ...]
 
 
 @dataclass(frozen=True)
@@ -50,6 +54,11 @@ class LibraryStep:
     settings: Frozen
     settings_json: str
     reads: tuple[str, ...]
+
+    @property
+    def anchors(self) -> bool:
+        """It moves quantities that others read, and needs none of them."""
+        return Anchor in self.stage.makes
 
 
 @dataclass(frozen=True)
@@ -89,33 +98,47 @@ class Chain:
 
     def computation(self, medium: str) -> str:
         """Names what is computed: stages, versions, settings and the medium of rows that name none."""
-        steps = [f"{step.stage.name} {step.stage.version} {step.settings_json}" for step in self.steps]
+        steps = [f"{step.stage.name} {step.stage.version} {step.settings_json}{_partly(step)}" for step in self.steps]
         return content_digest("computation", medium, *sorted(steps))
 
 
 def resolve(registry: Registry, brief: Brief) -> Chain:
-    """The chain for one brief; :class:`RequestError` lists every fault that can be seen beforehand."""
+    """The chain for one brief; :class:`RequestError` lists every fault that can be seen beforehand.
+
+    A plugin that does not fit is left out with a sentence in ``skipped``. It stops the brief only where a wanted
+    quantity is lost with it.
+    """
     skipped: list[str] = []
-    stages = _usable(registry.stages.values(), skipped)
-    library_stages = _usable(registry.library_stages.values(), skipped)
-    problems = _unknown_choices([*stages, *library_stages], brief)
-    stages, library_stages = _chosen(stages, brief), _chosen(library_stages, brief)
-    problems += _two_makers([*stages, *library_stages])
-    problems += _unknown_settings(registry, brief)
-    ordered, order_problems = _ordered(stages, skipped)
-    problems += order_problems
+    present = asked_for([*registry.stages.values(), *registry.library_stages.values()], brief)
+    usable = _usable(present, registry, skipped)
+    settled = settle(usable, brief, registry)
+    skipped += settled.remarks
+    usable = kept(usable, settled.gives, [want.quantity for want in brief.want])
+    ordered = _ordered([stage for stage in usable if isinstance(stage, Stage)], settled.gives, registry, skipped)
+    library_stages = [stage for stage in usable if not isinstance(stage, Stage)]
+    problems = settled.problems + _unknown_settings(registry, brief)
     settings, setting_problems = _settings([*ordered, *library_stages], brief)
     problems += setting_problems
-    offers = _offers([*ordered])
-    problems += want_problems(brief, offers) if not order_problems else []
-    problems += _brief_problems([*ordered, *library_stages], brief)
+    offers = _offers(kind for stage in ordered for kind in settled.gives[stage.name])
+    problems += want_problems(brief, offers, lost=offered(registry), why=skipped)
+    problems += [
+        text for stage in [*ordered, *library_stages] for text in _brief_problems(stage, brief, registry, skipped)
+    ]
     if problems:
         raise RequestError(*problems)
-    library_steps = tuple(_library_step(stage, settings[stage.name], brief) for stage in library_stages)
-    wanted = {want.quantity for want in brief.want} | {name for step in library_steps for name in step.reads}
-    essential = _essential(ordered, wanted)
+    library_steps = tuple(_library_steps(library_stages, settings, brief, registry, skipped))
+    wanted = {want.quantity for want in brief.want}
+    wanted |= {name for step in library_steps if not step.anchors for name in step.reads}
+    essential = _essential(ordered, settled.gives, wanted)
     steps = tuple(
-        Step(stage, settings[stage.name], _json(settings[stage.name]), position, stage.name in essential)
+        Step(
+            stage,
+            settings[stage.name],
+            _json(settings[stage.name]),
+            position,
+            stage.name in essential,
+            settled.gives[stage.name],
+        )
         for position, stage in enumerate(ordered)
     )
     return Chain(steps, library_steps, tuple(skipped))
@@ -123,15 +146,23 @@ def resolve(registry: Registry, brief: Brief) -> Chain:
 
 def offered(registry: Registry) -> dict[str, QuantityInfo]:
     """Every quantity that the registered per-candidate stages can offer, by name."""
-    return _offers(list(registry.stages.values()))
+    return _offers(kind for stage in registry.stages.values() for kind in stage.makes)
 
 
-def want_problems(brief: Brief, offers: dict[str, QuantityInfo]) -> list[str]:
-    """What is wrong with the wants: unknown quantities and units that do not fit."""
+def want_problems(
+    brief: Brief,
+    offers: Mapping[str, QuantityInfo],
+    *,
+    lost: Mapping[str, QuantityInfo] | None = None,
+    why: Sequence[str] = (),
+) -> list[str]:
+    """What is wrong with the wants: quantities that are unknown or lost (``why``), units that do not fit."""
     problems = []
     for number, want in enumerate(brief.want, 1):
         info = offers.get(want.quantity)
-        if info is None:
+        if info is None and want.quantity in (lost or {}):
+            problems.append(f"want {number}: {want.quantity} cannot be had here: {'; '.join(why)}")
+        elif info is None:
             near = suggestion(want.quantity, offers)
             hint = near or "`orchil stages --quantities` lists what can be wanted"
             problems.append(f'want {number}: unknown quantity "{want.quantity}", {hint}')
@@ -142,91 +173,59 @@ def want_problems(brief: Brief, offers: dict[str, QuantityInfo]) -> list[str]:
     return problems
 
 
-def _usable(stages: Iterable[Any], skipped: list[str]) -> list[Any]:
+def _usable(stages: Iterable[Any], registry: Registry, skipped: list[str]) -> list[Any]:
     usable = []
     for stage in stages:
         found = availability(stage)
         if found.ok:
             usable.append(stage)
         else:
-            skipped.append(f"stage {stage.name} is not usable here: {found.hint or 'no hint given'}")
+            skipped.append(f"{registry.described(stage)} is not usable here: {found.hint or 'no hint given'}")
     return usable
 
 
-def _chosen(stages: list[Any], brief: Brief) -> list[Any]:
-    """The stages without those makers that ``use`` decides against."""
-    return [
-        stage for stage in stages if all(brief.use.get(kind.kind, stage.name) == stage.name for kind in stage.makes)
-    ]
-
-
-def _unknown_choices(stages: list[Any], brief: Brief) -> list[str]:
-    problems = []
-    for kind, name in brief.use.items():
-        makers = [stage.name for stage in stages if any(made.kind == kind for made in stage.makes)]
-        if name not in makers:
-            known = ", ".join(makers) or "no stage"
-            problems.append(f'use: "{name}" does not make {kind}; {known} does')
-    return problems
-
-
-def _ordered(stages: list[Stage], skipped: Sequence[str]) -> tuple[list[Stage], list[str]]:
-    """The stages in an order in which every need is made before, or the problems that prevent it."""
-    problems = list(_missing_makers(stages, skipped))
-    if problems:
-        return stages, problems
+def _ordered(
+    stages: list[Stage], gives: Mapping[str, Sequence[Kind]], registry: Registry, skipped: list[str]
+) -> list[Stage]:
+    """The stages in an order in which every need is made before; one whose needs nobody makes is left out."""
     ordered: list[Stage] = []
     made: set[Kind] = {LibraryRow}
     waiting = sorted(stages, key=lambda stage: stage.name)
-    while waiting:
-        ready = [stage for stage in waiting if made.issuperset(stage.needs)]
-        if not ready:
-            return stages, [_cycle(waiting)]
+    while ready := [stage for stage in waiting if made.issuperset(stage.needs)]:
         ordered += ready
-        made.update(kind for stage in ready for kind in stage.makes)
+        made.update(kind for stage in ready for kind in gives[stage.name])
         waiting = [stage for stage in waiting if stage not in ready]
-    return ordered, []
+    skipped += [_left_waiting(stage, waiting, made, gives, registry) for stage in waiting]
+    return ordered
 
 
-def _two_makers(stages: list[Any]) -> list[str]:
-    """Sentences about record kinds that more than one stage makes, or that more than one type goes by."""
-    makers: dict[str, list[tuple[str, Kind]]] = {}
-    for stage in stages:
-        for kind in stage.makes:
-            makers.setdefault(kind.kind, []).append((stage.name, kind))
-    return [text for kind, made in sorted(makers.items()) if (text := _conflict(kind, made))]
+def _left_waiting(
+    stage: Stage, waiting: list[Stage], made: set[Kind], gives: Mapping[str, Sequence[Kind]], registry: Registry
+) -> str:
+    """Why a stage never gets its turn: a need that nobody makes, or a circle."""
+    missing = [kind for kind in stage.needs if kind not in made]
+    unmade = [kind for kind in missing if not any(kind in gives[other.name] for other in waiting)]
+    if unmade:
+        return (
+            f"{registry.described(stage)} needs {unmade[0].kind}, and no usable stage makes it: "
+            f"install a stage that makes {unmade[0].kind}, or uninstall {registry.distribution(stage.name)}"
+        )
+    maker = next(other for other in waiting if missing[0] in gives[other.name])
+    left_out = f"{registry.described(stage)} needs {missing[0].kind}, but {maker.name} is left out"
+    return _circle(stage, waiting) or left_out
 
 
-def _conflict(kind: str, made: list[tuple[str, Kind]]) -> str | None:
-    names = sorted(name for name, _ in made)
-    if kind == LibraryRow.kind:
-        return f"stage {names[0]} makes library_row, which only the library does: choose another kind"
-    if len({made_kind for _, made_kind in made}) > 1:
-        return f'{" and ".join(names)} use the name "{kind}" for different records: rename one'
-    if len(names) > 1:
-        choice = " or ".join(f'"{name}"' for name in names)
-        return f"{' and '.join(names)} both make {kind}: choose with [use] {kind} = {choice}"
-    return None
-
-
-def _missing_makers(stages: list[Stage], skipped: Sequence[str]) -> Iterator[str]:
-    makers = {kind for stage in stages for kind in stage.makes}
-    for stage in stages:
-        for kind in stage.needs:
-            if kind is not LibraryRow and kind not in makers:
-                why = f" ({'; '.join(skipped)})" if skipped else ""
-                yield f"stage {stage.name} needs {kind.kind}, and no usable stage makes it{why}"
-
-
-def _cycle(waiting: list[Stage]) -> str:
-    """A sentence about one closed loop among stages that wait for each other."""
-    path = [waiting[0]]
+def _circle(stage: Stage, waiting: list[Stage]) -> str | None:
+    """A sentence about the closed loop that ``stage`` waits in, None when it only waits for one."""
+    path = [stage]
     while True:
         needs = set(path[-1].needs)
-        before = next(stage for stage in waiting if needs.intersection(stage.makes))
-        if before in path:
-            loop = [stage.name for stage in path[path.index(before) :]]
-            return f"stages wait for each other in a circle: {' <- '.join([*loop, loop[0]])}"
+        before = next((other for other in waiting if needs.intersection(other.makes)), None)
+        if before is None or (before in path and before is not stage):
+            return None
+        if before is stage:
+            loop = " <- ".join(one.name for one in [*path, stage])
+            return f"stages wait for each other in a circle: {loop}: one of them must need less"
         path.append(before)
 
 
@@ -258,29 +257,52 @@ def _settings_of(stage: Any, brief: Brief) -> tuple[Frozen | None, list[str]]:
         return None, [f"[stage.{stage.name}] {text}" for text in sentences(error, stage.Settings)]
 
 
-def _brief_problems(stages: list[Any], brief: Brief) -> list[str]:
-    checks = [check for stage in stages if (check := getattr(stage, "check_brief", None)) is not None]
-    return [text for check in checks for text in check(brief)]
+def _brief_problems(stage: Any, brief: Brief, registry: Registry, skipped: list[str]) -> list[str]:
+    """What a stage itself says about the brief."""
+    check = getattr(stage, "check_brief", None)
+    try:
+        return list(check(brief)) if check is not None else []
+    except Exception as error:
+        skipped.append(_fault(stage, "check_brief", error, registry))
+        return []
 
 
-def _library_step(stage: LibraryStage, settings: Frozen, brief: Brief) -> LibraryStep:
-    return LibraryStep(stage, settings, _json(settings), tuple(stage.reads(brief, settings)))
+def _library_steps(
+    stages: Iterable[LibraryStage], settings: Mapping[str, Frozen], brief: Brief, registry: Registry, skipped: list[str]
+) -> Iterator[LibraryStep]:
+    """In the order of registration, but what moves numbers comes before what reads them."""
+    for stage in sorted(stages, key=lambda stage: Anchor not in stage.makes):
+        chosen = settings[stage.name]
+        try:
+            yield LibraryStep(stage, chosen, _json(chosen), tuple(stage.reads(brief, chosen)))
+        except Exception as error:
+            skipped.append(_fault(stage, "reads", error, registry))
 
 
-def _essential(ordered: list[Stage], wanted: set[str]) -> set[str]:
+def _fault(stage: Any, method: str, error: Exception, registry: Registry) -> str:
+    remedy = f"update or uninstall {registry.distribution(stage.name)}"
+    return f"{registry.described(stage)} has a fault in {method} ({type(error).__name__}: {error}): {remedy}"
+
+
+def _essential(ordered: list[Stage], gives: Mapping[str, Sequence[Kind]], wanted: set[str]) -> set[str]:
     """Names of the stages that lead to a wanted quantity."""
     needed: set[Kind] = set()
     names = set()
     for stage in reversed(ordered):
-        offers = {info.name for kind in stage.makes for info in kind.offers}
-        if offers & wanted or needed.intersection(stage.makes):
+        given = gives[stage.name]
+        if wanted.intersection(_offers(given)) or needed.intersection(given):
             names.add(stage.name)
             needed.update(stage.needs)
     return names
 
 
-def _offers(stages: list[Stage]) -> dict[str, QuantityInfo]:
-    return {info.name: info for stage in stages for kind in stage.makes for info in kind.offers}
+def _offers(kinds: Iterable[Kind]) -> dict[str, QuantityInfo]:
+    return {info.name: info for kind in kinds for info in kind.offers}
+
+
+def _partly(step: Step) -> str:
+    """Names what is taken from a step where that is not all it makes."""
+    return "" if step.gives == step.stage.makes else f" {[kind.kind for kind in step.gives]}"
 
 
 def _json(settings: Frozen) -> str:

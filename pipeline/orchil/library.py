@@ -14,7 +14,7 @@ from dataclasses import dataclass, field, replace
 from pathlib import Path
 from typing import TextIO
 
-from orchil_schemas import LibraryRow
+from orchil_schemas import MEASURED, LibraryRow
 
 from .errors import RequestError
 
@@ -33,7 +33,11 @@ SYNONYMS = {
     "structure": ("smiles", "structure", "canonical_smiles", "isomeric_smiles", "canonical smiles"),
     "medium": ("medium", "solvent"),
     "charge": ("charge", "net charge", "net_charge", "total charge", "total_charge"),
+    "measured_absorption_max_nm": ("measured_absorption_max_nm", "measured absorption max nm"),
+    "measured_emission_max_nm": ("measured_emission_max_nm", "measured emission max nm"),
 }
+MEASURABLE = tuple(meaning for meaning in SYNONYMS if meaning.startswith(MEASURED))
+MEASURED_LIMITS_NM = 100.0, 5000.0
 DELIMITERS = ",;\t|"
 CELL_LIMIT = 10_000_000
 SENTINEL = "\x1eend of library\x1e"
@@ -42,7 +46,10 @@ CHUNK = 1 << 20
 
 @dataclass(frozen=True)
 class ParsedRow:
-    """One row of the library; ``row_number`` counts data from 1; ``error`` says why it cannot be used."""
+    """One row of the library; ``row_number`` counts data from 1; ``error`` says why it cannot be used.
+
+    ``measured`` holds the user's own values by the name of the predicted quantity.
+    """
 
     row_number: int
     name: str
@@ -51,6 +58,7 @@ class ParsedRow:
     medium: str | None = None
     charge: int | None = None
     extra: dict[str, str] = field(default_factory=dict)
+    measured: dict[str, float] = field(default_factory=dict)
     error: str | None = None
     note: str | None = None
 
@@ -214,6 +222,7 @@ def _cell_count_error(found: int, expected: int) -> str | None:
 def _row(number: int, named: dict[str, str], extra: dict[str, str], kind: str, error: str | None) -> ParsedRow:
     """A row from texts by meaning; the first fault is its error."""
     charge, charge_error = _charge(named.get("charge", ""))
+    measured, measured_error = _measured(named)
     structure = named.get("structure", "")
     missing = None if structure.strip() else "the row has no structure: a SMILES is needed"
     return ParsedRow(
@@ -224,7 +233,8 @@ def _row(number: int, named: dict[str, str], extra: dict[str, str], kind: str, e
         medium=named.get("medium") or None,
         charge=charge,
         extra=extra,
-        error=error or missing or charge_error,
+        measured=measured,
+        error=error or missing or charge_error or measured_error,
     )
 
 
@@ -242,6 +252,34 @@ def _charge(text: str) -> tuple[int | None, str | None]:
     except ValueError:
         pass
     return None, f'the charge "{text[:40]}" is no whole number: write for example -1, 0 or 1'
+
+
+def _measured(named: dict[str, str]) -> tuple[dict[str, float], str | None]:
+    """Measured values by the name of the predicted quantity, and a sentence about the first that cannot be used."""
+    values: dict[str, float] = {}
+    for meaning in MEASURABLE:
+        text = named.get(meaning, "").strip()
+        value = _wavelength(text)
+        if value is not None:
+            values[meaning.removeprefix(MEASURED)] = value
+        elif text:
+            low, high = MEASURED_LIMITS_NM
+            return {}, (
+                f'{meaning} "{text[:40]}" is no wavelength in nm from {low:g} to {high:g}: '
+                "write one number, for example 532, or leave the cell empty"
+            )
+    return values, None
+
+
+def _wavelength(text: str) -> float | None:
+    """Nanometres as people write them: 532, 532.5, 532,5, 532 nm."""
+    plain = text.lower().removesuffix("nm").strip().replace(",", ".")
+    try:
+        value = float(plain)
+    except ValueError:
+        return None
+    low, high = MEASURED_LIMITS_NM
+    return value if low <= value <= high else None
 
 
 # .smi
@@ -286,7 +324,7 @@ def _sdf_row(number: int, block: list[str]) -> ParsedRow:
     extra: dict[str, str] = {}
     for title, value in _sdf_fields(block[end + 1 :] if end is not None else []):
         meaning = _meaning(title)
-        if meaning in ("name", "medium", "charge"):
+        if meaning in ("name", "medium", "charge", *MEASURABLE):
             named[meaning] = value
         else:
             extra[title] = value

@@ -54,7 +54,8 @@ class Task(Message):
 class Reply(Message):
     """What came of a task: records, or a reason.
 
-    ``grown_bytes`` is resident memory above that after the first task of the child.
+    ``grown_bytes`` is resident memory above that after the first task of the child. ``disturbed`` when the child was
+    killed by somebody for no fault of the task, which then begins again as if it had never been begun.
     """
 
     ok: bool
@@ -66,6 +67,7 @@ class Reply(Message):
     cpu_seconds: float | None = None
     versions: Mapping[str, str] = field(default_factory=dict)
     grown_bytes: int = 0
+    disturbed: bool = False
 
 
 READY = b"ready"

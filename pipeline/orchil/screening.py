@@ -7,9 +7,10 @@ from dataclasses import dataclass
 from itertools import islice
 from pathlib import Path
 
-from orchil_schemas import Brief, Record
+from orchil_schemas import MEASURED, Brief, Record, Score
 
 from . import briefs
+from .budget import Budget
 from .chain import Chain, LibraryStep, resolve
 from .errors import RequestError, RunError
 from .library import ParsedRow, read
@@ -58,40 +59,70 @@ def checked_brief(path: Path, registry: Registry) -> tuple[Brief, Chain]:
         raise RequestError(*(f"{path.name}: {problem}" for problem in error.problems)) from error
 
 
-def screen(made: Plan, store: Store, *, pool: Supervisor, progress: Progress, retry_failed: bool = False) -> Outcome:
-    """Run a plan to its end and rank. Run again with the same store, it continues."""
+def screen(
+    made: Plan,
+    store: Store,
+    *,
+    pool: Supervisor,
+    progress: Progress,
+    retry_failed: bool = False,
+    budget: Budget | None = None,
+) -> Outcome:
+    """Run a plan to its end, or to that of its budget, and rank. Run again with the same store, it continues."""
     with store.lock():
         screen_id = _begin(store, made)
         unreadable = _add_rows(store, made.rows())
+        _reopen_readable(store, _chosen(store, made.limit), unreadable)
         candidates = _chosen(store, made.limit)
         _fail_unreadable(store, candidates, unreadable)
         runnable = [state for state in candidates if state.row_number not in unreadable]
-        runner = Runner(store, made.chain, made.brief, pool, progress)
+        runner = Runner(store, made.chain, made.brief, pool, progress, budget=budget)
         outcome = runner.run(runnable, retry_failed=retry_failed)
-        rank(store, made.chain, made.brief, screen_id)
+        for remark in rank(store, made.chain, made.brief, screen_id):
+            progress.say(remark)
     return outcome
 
 
-def rank(store: Store, chain: Chain, brief: Brief, screen_id: int) -> None:
-    """Run the library stages over what is in the store."""
+def rank(store: Store, chain: Chain, brief: Brief, screen_id: int) -> list[str]:
+    """Run the library stages over what is in the store.
+
+    Returns a sentence for each stage that failed; :class:`RunError` where that leaves the library without a ranking.
+    """
+    remarks: list[str] = []
     for step in chain.library_steps:
-        store.put_library_records(screen_id, _library_records(store, step, brief))
+        try:
+            made = _library_records(store, step, brief) if _has_work(store, step) else []
+        except RunError as error:
+            if Score in step.stage.makes:
+                raise
+            made, remarks = [], [*remarks, f"{error}: everything else is there"]
+        store.put_library_records(screen_id, made, step.stage.makes)
+    return remarks
 
 
-def rescore(store: Store, brief: Brief, chain: Chain) -> list[str]:
-    """Rank a finished library against another brief; computes nothing physical. Returns remarks."""
+def rescore(store: Store, brief: Brief, chain: Chain, library: Path | None = None) -> list[str]:
+    """Rank a finished library against another brief; computes nothing physical. Returns remarks.
+
+    The measured values of ``library`` take the place of those in the store.
+    """
+    rows = [] if library is None else _measured_rows(library)
     with store.lock():
         before = store.active_screen()
         if before is None:
             raise RequestError("this store holds no screen yet: run `orchil screen` first")
         computed = before.versions.get(COMPUTATION, "")
+        new = store.update_measured(rows)
         versions = chain.versions() | {COMPUTATION: computed}
-        rank(store, chain, brief, store.begin_screen(library=before.library, brief=brief, versions=versions))
+        screen_id = store.begin_screen(library=before.library, brief=brief, versions=versions)
+        remarks = rank(store, chain, brief, screen_id)
+    if new:
+        remarks.append(f"{new} rows of the library are not in the store: `orchil screen` computes them")
     if computed == chain.computation(brief.medium):
-        return []
+        return remarks
     return [
+        *remarks,
         "the medium, the stage settings or the stage versions differ from those of the stored results, which "
-        "are ranked as they are: run `orchil screen` with this brief to compute them anew"
+        "are ranked as they are: run `orchil screen` with this brief to compute them anew",
     ]
 
 
@@ -105,10 +136,30 @@ def _begin(store: Store, made: Plan) -> int:
     return store.begin_screen(library=made.library.name, brief=made.brief, versions=versions)
 
 
+def _has_work(store: Store, step: LibraryStep) -> bool:
+    """False for a stage that works with measured values where there are none."""
+    needed = {name.removeprefix(MEASURED) for name in step.reads if name.startswith(MEASURED)}
+    return not needed or bool(needed & store.measured_names())
+
+
+def _measured_rows(library: Path) -> list[CandidateRow]:
+    """The rows of a library for their measured values; :class:`RequestError` names each value that is none."""
+    rows = list(read(library))
+    faults = [f"{library.name}: row {row.row_number} ({row.name}): {row.error}" for row in rows if _bad_value(row)]
+    if faults:
+        raise RequestError(*faults)
+    return [_candidate_row(row) for row in rows]
+
+
+def _bad_value(row: ParsedRow) -> bool:
+    return row.error is not None and row.error.startswith(MEASURED)
+
+
 def _library_records(store: Store, step: LibraryStep, brief: Brief) -> list[tuple[int, Record]]:
     name = step.stage.name
     try:
-        made = list(step.stage.run(store.library_table(step.reads), brief, step.settings))
+        table = store.library_table(step.reads, anchored=not step.anchors)
+        made = list(step.stage.run(table, brief, step.settings))
     except Exception as error:
         raise RunError(f"the library stage {name} failed: {type(error).__name__}: {error}") from error
     strange = next((record for _, record in made if type(record) not in step.stage.makes), None)
@@ -128,12 +179,23 @@ def _add_rows(store: Store, rows: Iterator[ParsedRow]) -> dict[int, str]:
 
 def _candidate_row(row: ParsedRow) -> CandidateRow:
     extra = row.extra | ({"reading note": row.note} if row.note else {})
-    return CandidateRow(row.row_number, row.name, row.structure, row.format, row.medium, row.charge, extra)
+    return CandidateRow(
+        row.row_number, row.name, row.structure, row.format, row.medium, row.charge, extra, row.measured
+    )
 
 
 def _chosen(store: Store, limit: int | None) -> list[CandidateState]:
     candidates = store.candidates()
     return candidates if limit is None else [state for state in candidates if state.row_number <= limit]
+
+
+def _reopen_readable(store: Store, candidates: Sequence[CandidateState], unreadable: dict[int, str]) -> None:
+    """Rows that could not be read and now can wait again: a measured value may be corrected in the file."""
+    store.forget_results(
+        state.id
+        for state in candidates
+        if state.status == "failed" and state.failed_stage == READING and state.row_number not in unreadable
+    )
 
 
 def _fail_unreadable(store: Store, candidates: Sequence[CandidateState], unreadable: dict[int, str]) -> None:

@@ -58,6 +58,13 @@ class _Slot:
     task: Task | None = None
     started: float = 0.0
     done: int = 0
+    memory_kills: int | None = None
+
+    @property
+    def disturbed(self) -> bool:
+        """The child, now dead, was killed from outside, and not by the system for lack of memory."""
+        known = self.memory_kills is not None and self.memory_kills == memory_kills()
+        return known and self.process.returncode == -signal.SIGKILL
 
     def kill(self) -> None:
         """End the child and everything it started, at once."""
@@ -152,7 +159,7 @@ class Supervisor:
             start_new_session=True,
         )
         theirs.close()
-        slot = _Slot(process, ours, words, until=time.monotonic() + STARTUP_SECONDS)
+        slot = _Slot(process, ours, words, time.monotonic() + STARTUP_SECONDS, memory_kills=memory_kills())
         self._slots.append(slot)
         with suppress(BrokenPipeError, ConnectionResetError):
             setup = Setup([str(Path(entry).absolute()) for entry in sys.path], os.getpid(), self.memory_bytes)
@@ -161,7 +168,7 @@ class Supervisor:
 
     def _send(self, slot: _Slot) -> None:
         assert slot.task is not None
-        slot.started = time.monotonic()
+        slot.started, slot.memory_kills = time.monotonic(), memory_kills()
         slot.until = slot.started + slot.task.time_limit
         with suppress(BrokenPipeError, ConnectionResetError):  # a dead child is noticed in wait
             slot.pipe.send_bytes(slot.task.encode())
@@ -196,6 +203,8 @@ class Supervisor:
             self._stillborn(slot, words)
             return None
         code, message = death(status, words)
+        if slot.disturbed:
+            code, message = "crashed", "the worker was killed from outside, not by the system for lack of memory"
         return self._lost(slot, code, message, recoverable=True)
 
     def _overrun(self, slot: _Slot) -> Result | None:
@@ -206,17 +215,18 @@ class Supervisor:
         return self._lost(slot, "timeout", f"stopped at the time limit of {limit:g} s", recoverable=False)
 
     def _lost(self, slot: _Slot, code: str, message: str, *, recoverable: bool) -> Result | None:
-        task, seconds = slot.task, time.monotonic() - slot.started
+        task, seconds, disturbed = slot.task, time.monotonic() - slot.started, slot.disturbed
         self._drop(slot)
         self._start()
         if task is None:
             return None
         shutil.rmtree(task.scratch, ignore_errors=True)
-        return Result(task, Reply(False, code=code, message=message, recoverable=recoverable, seconds=seconds))
+        reply = Reply(False, code=code, message=message, recoverable=recoverable, seconds=seconds, disturbed=disturbed)
+        return Result(task, reply)
 
     def _stillborn(self, slot: _Slot, words: str) -> None:
         """A child that died before it was ready: try again a few times, then give the run up."""
-        self._failed_starts += 1
+        self._failed_starts += not slot.disturbed
         if self._failed_starts >= STARTS_WITHOUT_SUCCESS:
             raise RunError(f"no worker process starts; the last one said: {words or 'nothing'}")
         task = slot.task
@@ -242,6 +252,15 @@ def death(status: int, words: str) -> tuple[str, str]:
     if status < 0:
         return "crashed", f"the worker crashed with {signal_name(-status)}{said}"
     return "crashed", f"the worker ended with exit code {status}{said}"
+
+
+def memory_kills() -> int | None:
+    """How many processes the system has killed for lack of memory since it runs; None where it does not tell."""
+    with suppress(OSError):
+        for line in Path("/proc/vmstat").read_text().splitlines():
+            if line.startswith("oom_kill "):
+                return int(line.split()[1])
+    return None
 
 
 def signal_name(number: int) -> str:

@@ -3,10 +3,23 @@
 Knows neither the engine nor any chemistry library.
 """
 
+from .anchor import MEASURED, UNANCHORED, Anchor, AnchoredQuantity, AnchoringDye
 from .arrays import FloatArray, IntArray, Shape
 from .base import Frozen, Quantity, QuantityInfo, Record, canonical_json, content_digest
 from .brief import Brief, Pick, Want
 from .errors import BadInput, BadResult, NotConverged, OutOfScope, StageError, TopologyChanged
+from .light import (
+    Colour,
+    Emission,
+    Orientation,
+    Partners,
+    Progression,
+    Redox,
+    Solvatochromism,
+    Spectrum,
+    Spread,
+    Transfer,
+)
 from .records import (
     HC_EV_NM,
     Band,
@@ -34,9 +47,15 @@ from .stage import (
     NoSettings,
     Stage,
 )
+from .states import DftCheck, StateAnalysis, Triplets
 
 __all__ = [
     "HC_EV_NM",
+    "MEASURED",
+    "UNANCHORED",
+    "Anchor",
+    "AnchoredQuantity",
+    "AnchoringDye",
     "Availability",
     "BadInput",
     "BadResult",
@@ -44,9 +63,12 @@ __all__ = [
     "Brief",
     "Check",
     "CheckResult",
+    "Colour",
     "Column",
     "Conformers",
     "Context",
+    "DftCheck",
+    "Emission",
     "FloatArray",
     "Frozen",
     "Geometry",
@@ -61,17 +83,27 @@ __all__ = [
     "NoSettings",
     "NotConverged",
     "Orbitals",
+    "Orientation",
     "OutOfScope",
+    "Partners",
     "Pick",
+    "Progression",
     "Quantity",
     "QuantityInfo",
     "Record",
+    "Redox",
     "Score",
     "Shape",
+    "Solvatochromism",
+    "Spectrum",
+    "Spread",
     "Stage",
     "StageError",
+    "StateAnalysis",
     "TopologyChanged",
+    "Transfer",
     "Transitions",
+    "Triplets",
     "Want",
     "WantResult",
     "all_records",

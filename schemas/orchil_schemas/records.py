@@ -10,8 +10,11 @@ from typing import Annotated, ClassVar
 import numpy as np
 from pydantic import Field
 
+from .anchor import Anchor
 from .arrays import FloatArray, IntArray, Shape
 from .base import Frozen, Quantity, QuantityInfo, Record
+from .light import light_records
+from .states import kinds_of_states
 
 HC_EV_NM = 1239.841984
 """Planck constant times speed of light, eV nm (CODATA 2018, exact by definition of the SI)."""
@@ -195,6 +198,11 @@ class Band(Record):
     emission_max_nm: float | None = None
     emission_low_nm: float | None = None
     emission_high_nm: float | None = None
+    emission_strength: float | None = Field(
+        default=None, description="oscillator strength that gives the radiative rate at the emission maximum"
+    )
+    emission_strength_low: float | None = None
+    emission_strength_high: float | None = None
     trust: str = Field(description='"inside", "edge" or "outside" of what the model was trained on')
     cautions: tuple[str, ...] = ()
 
@@ -275,7 +283,7 @@ class Score(Record):
 
 
 def all_records() -> tuple[type[Record], ...]:
-    """The record kinds of the main path, in the order they come into being."""
+    """The record kinds of the first-party stages, in the order they come into being."""
     return (
         LibraryRow,
         Identity,
@@ -285,6 +293,9 @@ def all_records() -> tuple[type[Record], ...]:
         Geometry,
         Orbitals,
         Transitions,
+        *kinds_of_states(),
         Band,
+        *light_records(),
+        Anchor,
         Score,
     )

@@ -81,7 +81,9 @@ class Stage(Protocol):
     """One step of the chain for one candidate. Pure: same inputs, settings and seed, same records.
 
     Optional: a method ``check_brief(brief: Brief) -> list[str]`` that returns problems with the brief (an unknown
-    medium, say) as sentences; the engine asks it before the first candidate and refuses the brief on any.
+    medium, say) as sentences; the engine asks it before the first candidate and refuses the brief on any. Optional:
+    ``on_request = True`` for a stage too dear for every candidate, which runs only where a brief names it or wants
+    what it offers.
     """
 
     name: str
@@ -112,11 +114,17 @@ class Column:
 
 @dataclass(frozen=True)
 class LibraryTable:
-    """The whole library as a library stage sees it: parallel sequences of length n."""
+    """The whole library as a library stage sees it: parallel sequences of length n.
+
+    The user's measured values are columns too: ``measured_absorption_max_nm`` goes with ``absorption_max_nm``.
+    ``medium`` is empty where a row names none and no stage has settled it.
+    """
 
     candidate: Sequence[int]
     smiles: Sequence[str]
     columns: Mapping[str, Column]
+    name: Sequence[str] = ()
+    medium: Sequence[str] = ()
 
     def column(self, name: str) -> Column:
         """The column of one quantity; all NaN when no candidate has it."""

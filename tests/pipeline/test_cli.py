@@ -11,7 +11,7 @@ import sys
 import pandas as pd
 import pytest
 from orchil.cli import run
-from orchil.cli.query import defused
+from orchil.cli.formats import defused
 from orchil.cli.tables import cell_text, digits, interval
 
 

@@ -10,9 +10,11 @@ import time
 from pathlib import Path
 
 import pytest
+from orchil.board import DISTURBANCES
 from orchil.errors import RequestError
 from orchil.screening import checked_brief, rescore
 from orchil.store import Store, StoreError
+from orchil.supervisor import memory_kills
 
 BRIEF = 'title = "Words"\nmedium = "water"\n[[want]]\nquantity = "strength"\nat_least = 5\n'
 
@@ -44,17 +46,15 @@ def test_every_kind_of_failure_is_a_row_with_a_reason(night):
 
 def test_recoverable_failures_are_tried_once_more_and_both_tries_are_kept(night):
     night.run("shy-one", "never-1", "killedonce-1", "raise-1")
+    # A worker that is killed for no lack of memory begins again, before that counts as a try that failed.
+    again = 0 if memory_kills() is None else DISTURBANCES
+    code = "out_of_memory" if memory_kills() is None else "crashed"
     tries = night.query(
         "SELECT structure, attempt, ok, a.reason_code FROM attempt a "
         "JOIN candidate c ON c.id = a.candidate_id WHERE stage = 'brew' ORDER BY structure, attempt"
     )
     assert [(row["structure"], row["attempt"], row["ok"], row["reason_code"]) for row in tries] == [
-        (
-            "killedonce-1",
-            1,
-            0,
-            "out_of_memory",
-        ),  # killed from outside: the system does that when memory is short
+        *[("killedonce-1", 1, 0, code)] * (again + 1),
         ("killedonce-1", 2, 1, None),
         ("never-1", 1, 0, "not_converged"),
         ("never-1", 2, 0, "not_converged"),

@@ -8,8 +8,9 @@ import time
 from pathlib import Path
 
 import pytest
+from orchil import supervisor
 from orchil.messages import Task
-from orchil.supervisor import ONE_THREAD, Supervisor, death
+from orchil.supervisor import ONE_THREAD, STARTS_WITHOUT_SUCCESS, Supervisor, death, memory_kills
 from orchil_schemas import canonical_json
 
 
@@ -69,8 +70,28 @@ def test_a_worker_killed_from_outside_is_replaced(pool):
         pool.wait(0.1)
     os.kill(pool.pids[0], signal.SIGKILL)
     reply = results(pool, 1)["slow-1"].reply
-    assert (reply.ok, reply.code, reply.recoverable) == (False, "out_of_memory", True)
+    told = memory_kills() is not None  # the system says whether it was short of memory
+    assert (reply.ok, reply.code, reply.disturbed) == (False, "crashed" if told else "out_of_memory", told)
+    assert reply.recoverable
     pool.submit(task("alpha"))
+    assert results(pool, 1)["alpha"].reply.ok
+
+
+def test_a_worker_that_the_system_kills_for_lack_of_memory_has_failed(pool, monkeypatch):
+    pool.submit(task("slow-1"))
+    while not any(slot.ready for slot in pool._slots):
+        pool.wait(0.1)
+    monkeypatch.setattr(supervisor, "memory_kills", lambda: 1 << 40)  # the system has killed something meanwhile
+    os.kill(pool.pids[0], signal.SIGKILL)
+    reply = results(pool, 1)["slow-1"].reply
+    assert (reply.code, reply.recoverable, reply.disturbed) == ("out_of_memory", True, False)
+
+
+def test_workers_killed_before_they_are_ready_do_not_end_the_run(pool):
+    pool.submit(task("alpha"))
+    for _ in range(STARTS_WITHOUT_SUCCESS if memory_kills() is not None else 1):
+        os.kill(pool.pids[0], signal.SIGKILL)
+        assert pool.wait(30) == []
     assert results(pool, 1)["alpha"].reply.ok
 
 

@@ -62,7 +62,7 @@ def run(monkeypatch: pytest.MonkeyPatch, tmp_path: Path) -> Run:
 
     def call(geometry: Geometry, medium: Medium = GAS, **settings: int) -> tuple[Orbitals, Transitions]:
         made = list(stage.run(Inputs([geometry, medium]), stage.Settings(**settings), Context(tmp_path, 1)))
-        orbitals, transitions = made
+        orbitals, transitions, *_ = made
         assert isinstance(orbitals, Orbitals)
         assert isinstance(transitions, Transitions)
         return orbitals, transitions

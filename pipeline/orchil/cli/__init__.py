@@ -39,34 +39,58 @@ def screen(  # noqa: PLR0917 (one parameter per option)
     retry_failed: Annotated[bool, typer.Option("--retry-failed", help="try failed candidates again")] = False,
     memory: Annotated[float, typer.Option(min=0.1, help="GiB that one worker may take for a stage")] = 4.0,
     limit: Annotated[int | None, typer.Option(min=1, help="only the first rows of the library")] = None,
+    until: Annotated[str | None, typer.Option(help='stop at this time of day, like "07:00"; best first')] = None,
+    hours: Annotated[float | None, typer.Option(help="stop after so many hours; best first")] = None,
     top: Top = 10,
 ) -> None:
     """Compute and rank a library. Run it again and it continues where it was."""
     from .screen import Effort, Request, run_screen
 
     count = workers or len(os.sched_getaffinity(0))
-    raise typer.Exit(run_screen(Request(library, brief, limit, store), Effort(count, memory, retry_failed), top))
+    effort = Effort(count, memory, retry_failed, until, hours)
+    raise typer.Exit(run_screen(Request(library, brief, limit, store), effort, top))
 
 
 @app.command()
-def rank(store: StoreName, brief: BriefFile, top: Top = 10) -> None:
-    """Rank what is in a store against another brief; computes nothing else."""
+def rank(
+    store: StoreName,
+    brief: BriefFile,
+    library: Annotated[Path | None, typer.Option("--library", help="take its measured columns anew")] = None,
+    top: Top = 10,
+) -> None:
+    """Rank what is in a store against another brief or with new measurements; computes nothing else."""
     from .screen import run_rank
 
-    raise typer.Exit(run_rank(store, brief, top))
+    raise typer.Exit(run_rank(store, brief, library, top))
 
 
 @app.command()
-def query(
+def recompute(
     store: StoreName,
-    sql: Annotated[str, typer.Argument(help='one SELECT, for example "SELECT * FROM ranking LIMIT 10"')],
-    form: Annotated[str, typer.Option("--format", "-f", help="table, csv, json or parquet")] = "table",
+    stage: Annotated[str, typer.Argument(help="a stage that runs on request, such as dft")],
+    best: Annotated[int, typer.Option("--best", min=1, help="so many candidates, the best of the ranking")] = 5,
+    workers: Annotated[int, typer.Option(min=1, help="processes")] = 1,
+    memory: Annotated[float, typer.Option(min=0.1, help="GiB that one worker may take")] = 4.0,
+) -> None:
+    """Run a dear stage for the best candidates of a finished screen; the ranking stays as it is."""
+    from .recompute import run_recompute
+
+    raise typer.Exit(run_recompute(store, stage, best, workers, memory))
+
+
+@app.command()
+def query(  # noqa: PLR0917 (one parameter per option)
+    store: StoreName,
+    sql: Annotated[str | None, typer.Argument(help="one SELECT; without it and --ask: list the questions")] = None,
+    ask: Annotated[str | None, typer.Option(help="a ready-made question by name, or an SQL file")] = None,
+    settings: Annotated[list[str] | None, typer.Option("--set", help="NAME=VALUE for a question, repeatable")] = None,
+    form: Annotated[str, typer.Option("--format", "-f", help="table, csv, json, parquet or sdf")] = "table",
     output: Annotated[Path | None, typer.Option("--output", "-o", help="write to this file")] = None,
 ) -> None:
     """Ask the store a question in SQL, also while a screen is running; nothing can be changed."""
-    from .query import run_query
+    from .query import Asked, run_query
 
-    run_query(store, sql, form, output)
+    run_query(store, Asked(sql, ask, tuple(settings or ())), form, output)
 
 
 @app.command()
@@ -81,14 +105,57 @@ def show(
 
 
 @app.command()
+def report(
+    store: StoreName,
+    output: Annotated[Path, typer.Option("--output", "-o", help="the HTML file to write")],
+    rows: Annotated[int, typer.Option(min=1, help="candidates in the table, the best first")] = 500,
+    also: Annotated[list[str] | None, typer.Option(help="a candidate that gets a page too, repeatable")] = None,
+) -> None:
+    """Write one HTML file with the whole answer, which opens anywhere without a network."""
+    from orchil.report import ReportRequest
+
+    from .report import run_report
+
+    run_report(store, output, ReportRequest(rows, tuple(also or ())))
+
+
+@app.command()
+def serve(
+    store: StoreName,
+    port: Annotated[int, typer.Option(min=0, max=65535, help="0 takes any free one")] = 0,
+) -> None:
+    """Show the same pages live in a browser on this machine, also while a screen is running."""
+    from .serve import run_serve
+
+    run_serve(store, port)
+
+
+@app.command()
 def stages(
     quantities: Annotated[bool, typer.Option("--quantities", help="list what a brief can want")] = False,
     schema: Annotated[Path | None, typer.Option("--schema", help="write JSON Schema files to this folder")] = None,
+    explain: Annotated[bool, typer.Option("--explain", help="draw the chain, and say who is left out and why")] = False,
+    brief: Annotated[Path | None, typer.Option("--brief", "-b", help="explain the chain of this brief")] = None,
+    svg: Annotated[Path | None, typer.Option("--svg", help="draw the explained chain into this SVG file too")] = None,
 ) -> None:
-    """List the stages that are installed, or what can be wanted from them."""
-    from .stages import run_stages
+    """List the stages that are installed, what can be wanted from them, or how they follow each other."""
+    from .stages import run_explain, run_stages
 
-    run_stages(quantities, schema)
+    if explain or brief is not None or svg is not None:
+        run_explain(brief, svg)
+    else:
+        run_stages(quantities, schema)
+
+
+@app.command(name="new-stage")
+def new_stage(
+    name: Annotated[str, typer.Argument(help='name of the stage, like "ring-count"')],
+    into: Annotated[Path, typer.Option("--into", help="folder in which the package is made")] = Path(),
+) -> None:
+    """Make a small installable package with one stage of your own."""
+    from .new_stage import run_new_stage
+
+    run_new_stage(name, into)
 
 
 @app.command()

@@ -1,97 +1,63 @@
-"""`orchil query`: the rows of one SELECT as a table, CSV, JSON or Parquet."""
+"""`orchil query`: the rows of one SELECT, or of a ready-made question."""
 
 from __future__ import annotations
 
-import io
-import sys
-from collections.abc import Callable
+from collections.abc import Iterable
+from dataclasses import dataclass
 from pathlib import Path
-from typing import IO
-
-import pandas as pd
-from pandas.api.types import is_numeric_dtype
-from rich.table import Table
 
 from orchil.errors import RequestError
+from orchil.questions import Question, find, questions
 from orchil.store import Store
 
-from .tables import console, missing, table
+from . import formats
+from .common import loaded_registry
+from .tables import console, table
 
-FORMULA_STARTS = ("=", "+", "-", "@", "\t", "\r")
-"""A spreadsheet takes text that begins like this for a formula."""
+
+@dataclass(frozen=True)
+class Asked:
+    """SQL, or the name of a question with its parameters as NAME=VALUE; neither: list the questions."""
+
+    sql: str | None
+    ask: str | None
+    settings: tuple[str, ...]
 
 
-def run_query(target: str, sql: str, form: str, output: Path | None) -> None:
+def run_query(target: str, asked: Asked, form: str, output: Path | None) -> None:
     """Run the query and write its rows."""
-    if form not in WRITERS:
-        raise RequestError(f'there is no format "{form}": use {", ".join(WRITERS)}')
-    if form == "parquet" and output is None and sys.stdout.isatty():
-        raise RequestError("parquet is no text for a terminal: name a file with --output")
-    with Store.open_read_only(target) as store:
-        rows = store.query(sql)
-    if output is None:
-        WRITERS[form](rows, sys.stdout.buffer)
-        sys.stdout.flush()
-    else:
-        _write_file(rows, form, output)
-
-
-def _write_file(rows: pd.DataFrame, form: str, output: Path) -> None:
-    try:
-        with output.open("wb") as file:
-            WRITERS[form](rows, file)
-    except OSError as error:
-        raise RequestError(f"{output} cannot be written: {error.strerror}") from error
-
-
-def _write_table(rows: pd.DataFrame, file: IO[bytes]) -> None:
-    if file is sys.stdout.buffer:
-        sys.stdout.flush()
-        console().print(_table(rows))
+    if asked.sql is None and asked.ask is None:
+        _list(questions().values())
         return
-    text = io.StringIO()
-    console(text).print(_table(rows))
-    file.write(text.getvalue().encode())
+    sql, parameters = _statement(asked)
+    offers = loaded_registry().offers
+    formats.check(form, output, offers.formats)
+    with Store.open_read_only(target) as store:
+        rows = store.query(sql, parameters, offers.sql_functions.values())
+    formats.write(rows, form, output, offers.formats)
 
 
-def _table(rows: pd.DataFrame) -> Table:
-    return table([str(name) for name in rows.columns], rows.itertuples(index=False))
+def _statement(asked: Asked) -> tuple[str, dict[str, str | int | float]]:
+    if asked.sql is not None and asked.ask is not None:
+        raise RequestError("give SQL or --ask, not both")
+    given = dict(map(_setting, asked.settings))
+    if asked.ask is not None:
+        question = find(asked.ask)
+        return question.sql, question.values(given)
+    if given:
+        raise RequestError("--set goes with --ask: in SQL write the value itself")
+    return asked.sql or "", {}
 
 
-def _write_csv(rows: pd.DataFrame, file: IO[bytes]) -> None:
-    safe = rows.apply(lambda column: column if is_numeric_dtype(column) else column.map(defused))
-    file.write(safe.rename(columns=defused).to_csv(index=False).encode())
+def _setting(text: str) -> tuple[str, str]:
+    name, equals, value = text.partition("=")
+    if not equals or not name.strip():
+        raise RequestError(f'--set "{text}" is not NAME=VALUE, for example --set best=20')
+    return name.strip(), value.strip()
 
 
-def _write_json(rows: pd.DataFrame, file: IO[bytes]) -> None:
-    import json
-
-    records = [{key: plain(value) for key, value in row.items()} for row in rows.to_dict("records")]
-    file.write(json.dumps(records, indent=1, ensure_ascii=False, allow_nan=False).encode() + b"\n")
-
-
-def _write_parquet(rows: pd.DataFrame, file: IO[bytes]) -> None:
-    rows.to_parquet(file, index=False)
-
-
-def defused(value: object) -> object:
-    """Text that a spreadsheet would run as a formula gets an apostrophe before it; numbers stay numbers."""
-    return f"'{value}" if isinstance(value, str) and value.startswith(FORMULA_STARTS) else value
-
-
-def plain(value: object) -> object:
-    """A value that JSON knows; a missing one is null."""
-    if missing(value):
-        return None
-    if isinstance(value, bytes):
-        return value.hex()
-    item = getattr(value, "item", None)
-    return item() if callable(item) else value
-
-
-WRITERS: dict[str, Callable[[pd.DataFrame, IO[bytes]], None]] = {
-    "table": _write_table,
-    "csv": _write_csv,
-    "json": _write_json,
-    "parquet": _write_parquet,
-}
+def _list(found: Iterable[Question]) -> None:
+    rows = [
+        (one.name, one.asks, "; ".join(f"{each.name} = {each.default}" for each in one.parameters)) for one in found
+    ]
+    console().print(table(["--ask", "question", "--set"], rows))

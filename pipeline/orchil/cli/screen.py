@@ -2,9 +2,11 @@
 
 from __future__ import annotations
 
+import shlex
 from dataclasses import dataclass
 from pathlib import Path
 
+from orchil.budget import Budget, budget_of
 from orchil.errors import OrchilError, RunError
 from orchil.progress import for_stream
 from orchil.runner import Outcome
@@ -31,40 +33,67 @@ class Request:
 
 @dataclass(frozen=True)
 class Effort:
-    """Worker processes, GiB for each, and whether failures are tried again."""
+    """Worker processes, GiB for each, whether failures are tried again, and when the night ends."""
 
     workers: int
     memory_gib: float
     retry_failed: bool
+    until: str | None = None
+    hours: float | None = None
 
 
 def run_screen(request: Request, effort: Effort, top: int) -> int:
     """Screen, rank, print the top; returns the exit code."""
+    budget = budget_of(effort.until, effort.hours)
     made = plan(request.library, request.brief, loaded_registry(), limit=request.limit)
     remark(made.chain.skipped)
     with Store.open(request.store, create=True) as store:
-        outcome = _screen(made, store, effort)
+        outcome = _screen(made, store, effort, budget)
         failed = sum(state.status == "failed" for state in store.candidates())
         _report(store, made.brief.medium, top)
+        continuation = _command(request, effort, top, str(store.location))
+    if outcome.time_up and not outcome.stopped:
+        remark(_left(outcome, continuation))
+        return BROKE
     if outcome.stopped and outcome.left:
         remark([f"stopped with {outcome.left} candidates left; the same command continues"])
         return BROKE
     return SOME_FAILED if failed else DONE
 
 
-def _screen(made: Plan, store: Store, effort: Effort) -> Outcome:
+def _left(outcome: Outcome, continuation: str) -> list[str]:
+    """The last words of a night that was too short."""
+    finished = outcome.done + outcome.failed
+    return [
+        f"the time is up: {finished} of {finished + outcome.left} candidates were finished, the most promising first; "
+        f"{outcome.left} are left, waiting",
+        f"to continue: {continuation}",
+    ]
+
+
+def _command(request: Request, effort: Effort, top: int, store: str) -> str:
+    """The command that continues; ``store`` shows no password."""
+    options = {"--brief": request.brief, "--store": store, "--workers": effort.workers, "--memory": effort.memory_gib}
+    options |= {"--limit": request.limit, "--until": effort.until, "--hours": effort.hours, "--top": top}
+    words = [str(word) for name, value in options.items() if value is not None for word in (name, value)]
+    again = ["--retry-failed"] if effort.retry_failed else []
+    return shlex.join(["orchil", "screen", str(request.library), *words, *again])
+
+
+def _screen(made: Plan, store: Store, effort: Effort, budget: Budget | None) -> Outcome:
     with Supervisor(effort.workers, memory_bytes=int(effort.memory_gib * GIB)) as pool:
         try:
-            return screen(made, store, pool=pool, progress=for_stream(), retry_failed=effort.retry_failed)
+            progress, again = for_stream(), effort.retry_failed
+            return screen(made, store, pool=pool, progress=progress, retry_failed=again, budget=budget)
         except KeyboardInterrupt:
             raise RunError("stopped at once; the same command continues") from None
 
 
-def run_rank(target: str, brief_path: Path, top: int) -> int:
-    """Rank a store against another brief; returns the exit code."""
+def run_rank(target: str, brief_path: Path, library: Path | None, top: int) -> int:
+    """Rank a store against another brief or with the measured columns of a library; returns the exit code."""
     brief, chain = checked_brief(brief_path, loaded_registry())
     with Store.open(target, create=False) as store:
-        remark(rescore(store, brief, chain))
+        remark(rescore(store, brief, chain, library))
         _report(store, brief.medium, top)
     return DONE
 

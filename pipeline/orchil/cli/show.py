@@ -2,15 +2,21 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
 from typing import Any
 
+from orchil_schemas import Brief
 from rich.console import Console
+from rich.table import Table
 
 from orchil.errors import RequestError
 from orchil.progress import duration
-from orchil.store import CandidatePage, ScreenInfo, Store
+from orchil.report.words import THIN, limits
+from orchil.store import CandidatePage, ScreenInfo, Store, StoreError
 
+from .anchored import anchor_tables, band_now
+from .common import loaded_registry
+from .numbers import number_tables
 from .tables import NumberText, cell_text, console, digits, interval, missing, ranking_table, settled, table
 
 
@@ -24,9 +30,16 @@ def run_show(target: str, candidate: str | None) -> None:
             _show_night(store, screen, console())
             return
         page = store.candidate_page(candidate)
-    if page is None:
-        raise RequestError(f'there is no candidate "{candidate}" in this store')
-    _show_page(page, screen, console())
+        if page is None:
+            raise RequestError(f'there is no candidate "{candidate}" in this store')
+        _show_page(page, screen, console(), _numbers(store, page))
+
+
+def _numbers(store: Store, page: CandidatePage) -> list[Table]:
+    try:
+        return list(number_tables(store, page, loaded_registry()))
+    except StoreError:  # a database server answers its own client, not `query`
+        return []
 
 
 # The night
@@ -67,17 +80,23 @@ def _print_query(store: Store, out: Console, title: str, sql: str) -> None:
 # One candidate
 
 
-def _show_page(page: CandidatePage, screen: ScreenInfo, out: Console) -> None:
+def _show_page(page: CandidatePage, screen: ScreenInfo, out: Console, numbers: Iterable[Table]) -> None:
     state, row = page.candidate, page.row
     out.print(cell_text(f"{state.name} (row {state.row_number}) in {state.medium or screen.brief.medium}"))
     for sentence in _sentences(page):
         out.print(cell_text(sentence))
     if not missing(row.get("absorption_max_nm")):
-        out.print(table(["band", "value", "unit"], _band_rows(row, page.records.get("band", {}))))
+        out.print(table(["band", "value", "unit"], _band_rows(row, band_now(page.records))))
+    for made in anchor_tables(page.records):
+        out.print(made)
     if page.wants:
-        out.print(table(["want", "value", "probability", "weight", "share of the loss"], _want_rows(page)))
+        out.print(table(_WANT_HEADERS, _want_rows(page, screen.brief)))
     if "transitions" in page.records:
         out.print(table(_STATE_HEADERS, _state_rows(page.records["transitions"]), title="states"))
+    if weak := _weak_rows(page.records.get("state_analysis", {})):
+        out.print(table(["state", "why it is weak"], weak))
+    for made in numbers:
+        out.print(made)
     if page.attempts:
         out.print(table(_ATTEMPT_HEADERS, map(_attempt_row, page.attempts), title="attempts"))
     if page.extra:
@@ -141,9 +160,15 @@ def _spanned(row: Mapping[str, Any], band: Mapping[str, Any], key: str) -> objec
     return interval(value, least, most)
 
 
-def _want_rows(page: CandidatePage) -> list[tuple[object, ...]]:
-    keys = ("quantity", "value", "probability", "weight", "contribution")
-    return [tuple(want[key] for key in keys) for want in page.wants]
+_WANT_HEADERS = ["want", "wanted", "value", "probability", "weight", "share of the loss"]
+
+
+def _want_rows(page: CandidatePage, brief: Brief) -> list[tuple[object, ...]]:
+    """Each want with its limits; those of a store and its brief stand in the same order."""
+    keys = ("value", "probability", "weight", "contribution")
+    said = [limits(want, want.unit or "").replace(THIN, " ") for want in brief.want]
+    wanted = [text + (", a must" if want.must else "") for text, want in zip(said, brief.want, strict=True)]
+    return [(row["quantity"], wanted[row["position"] - 1], *(row[key] for key in keys)) for row in page.wants]
 
 
 _STATE_HEADERS = [
@@ -179,6 +204,10 @@ def _state_rows(transitions: Mapping[str, Any]) -> list[tuple[object, ...]]:
             )
         )
     return rows
+
+
+def _weak_rows(analysis: Mapping[str, Any]) -> list[tuple[object, ...]]:
+    return [(at, text) for at, text in enumerate(analysis.get("explanation", ()), 1) if text]
 
 
 _ATTEMPT_HEADERS = ["stage", "version", "attempt", "result", "time", "host", "versions"]

@@ -11,8 +11,11 @@ from pathlib import Path
 from orchil_schemas import Availability, Brief, Check, CheckResult, LibraryRow, LibraryStage, Stage
 from pydantic import BaseModel
 
+from orchil import briefs
 from orchil.chain import Kind, offered
 from orchil.errors import RequestError
+from orchil.explain import as_text, explained
+from orchil.explain_svg import as_svg
 from orchil.registry import Registry, availability
 from orchil.supervisor import ONE_THREAD
 
@@ -33,6 +36,16 @@ def run_stages(quantities: bool, schema: Path | None) -> None:
     else:
         headers = ["stage", "version", "needs", "makes", "usable", "from"]
         console().print(table(headers, [_stage_row(stage, registry) for stage in _all_stages(registry)]))
+
+
+def run_explain(brief_path: Path | None, svg: Path | None) -> None:
+    """Draw the chain of a brief, or the chain as it is when nothing is wanted."""
+    registry = loaded_registry()
+    brief = None if brief_path is None else briefs.load(brief_path)
+    chain = explained(registry, brief)
+    print(as_text(chain, registry))
+    if svg is not None:
+        _write(svg, as_svg(chain, registry))
 
 
 def run_check() -> int:
@@ -89,11 +102,14 @@ def _result(check: Check) -> CheckResult:
 def _write_schemas(registry: Registry, folder: Path) -> None:
     kinds: dict[str, Kind] = {kind.kind: kind for stage in _all_stages(registry) for kind in stage.makes}
     models: dict[str, type[BaseModel]] = {**kinds, LibraryRow.kind: LibraryRow, "brief": Brief}
-    try:
-        folder.mkdir(parents=True, exist_ok=True)
-        for name, model in models.items():
-            text = json.dumps(model.model_json_schema(), indent=2) + "\n"
-            (folder / f"{name}.schema.json").write_text(text, encoding="utf-8")
-    except OSError as error:
-        raise RequestError(f"{folder} cannot be written: {error.strerror}") from error
+    for name, model in models.items():
+        _write(folder / f"{name}.schema.json", json.dumps(model.model_json_schema(), indent=2) + "\n")
     print(f"{len(models)} schemas in {folder}", file=sys.stderr)
+
+
+def _write(path: Path, text: str) -> None:
+    try:
+        path.parent.mkdir(parents=True, exist_ok=True)
+        path.write_text(text, encoding="utf-8")
+    except OSError as error:
+        raise RequestError(f"{path} cannot be written: {error.strerror}") from error

@@ -1,4 +1,4 @@
-"""Candidates from the library file, added once and never changed."""
+"""Candidates from the library file, added once and never changed; only what the user measured may change."""
 
 from __future__ import annotations
 
@@ -10,7 +10,7 @@ import sqlalchemy as sa
 
 from . import bulk
 from .errors import StoreError
-from .models import candidate
+from .models import candidate, measurement
 from .rows import CandidateRow
 
 _CHUNK = 5000
@@ -20,12 +20,51 @@ _CONTENT = ("row_number", "name", "structure", "format", "medium", "charge", "ex
 def add_candidates(connection: sa.Connection, rows: Sequence[CandidateRow]) -> None:
     """Add the rows that are not there; :class:`StoreError` when one is there with another content."""
     for chunk in _chunks(rows):
-        known = _known(connection, min(chunk), max(chunk))
-        changed = [number for number in chunk.keys() & known.keys() if chunk[number] != known[number]]
-        if changed:
-            raise _changed(known[min(changed)], chunk[min(changed)])
+        known = _unchanged(connection, chunk)
         new = [content | {"status": "waiting"} for number, content in chunk.items() if number not in known]
         bulk.insert(connection, candidate, new)
+    _write_measured(connection, rows)
+
+
+def update_measured(connection: sa.Connection, rows: Sequence[CandidateRow]) -> int:
+    """Take the measured values of the rows that are there; returns how many rows are not.
+
+    :class:`StoreError` when one is there with another content.
+    """
+    there: set[int] = set()
+    for chunk in _chunks(rows):
+        there |= _unchanged(connection, chunk).keys()
+    known = [row for row in rows if row.row_number in there]
+    _write_measured(connection, known)
+    return len(rows) - len(known)
+
+
+def _write_measured(connection: sa.Connection, rows: Sequence[CandidateRow]) -> None:
+    """Replace what was measured for these rows."""
+    if not any(row.measured for row in rows) and connection.execute(sa.select(measurement).limit(1)).first() is None:
+        return
+    found = sa.select(candidate.c.id, candidate.c.row_number)
+    for start in range(0, len(rows), _CHUNK):
+        measured = {row.row_number: row.measured for row in rows[start : start + _CHUNK]}
+        within = candidate.c.row_number.between(min(measured), max(measured))
+        owners = {number: owner for owner, number in connection.execute(found.where(within)) if number in measured}
+        old = sa.delete(measurement).where(measurement.c.candidate_id == sa.bindparam("key"))
+        connection.execute(old, [{"key": owner} for owner in owners.values()])
+        new = [
+            {"name": name, "candidate_id": owners[number], "value": value}
+            for number, values in measured.items()
+            for name, value in values.items()
+        ]
+        bulk.insert(connection, measurement, new)
+
+
+def _unchanged(connection: sa.Connection, chunk: dict[int, dict[str, Any]]) -> dict[int, dict[str, Any]]:
+    """The rows of a chunk that are there; :class:`StoreError` when one is there with another content."""
+    known = _known(connection, min(chunk), max(chunk))
+    changed = [number for number in chunk.keys() & known.keys() if chunk[number] != known[number]]
+    if changed:
+        raise _changed(known[min(changed)], chunk[min(changed)])
+    return {number: content for number, content in known.items() if number in chunk}
 
 
 def _chunks(rows: Sequence[CandidateRow]) -> Iterator[dict[int, dict[str, Any]]]:

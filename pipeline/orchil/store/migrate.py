@@ -10,7 +10,7 @@ from .engine import writable_engine, writer
 from .errors import StoreError
 from .location import Location
 
-REVISIONS = ("0001",)
+REVISIONS = ("0001", "0002")
 """All revisions, oldest first; the last is what this version reads and writes."""
 
 APPLICATION_ID = int.from_bytes(b"Orch", "big")

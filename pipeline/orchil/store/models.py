@@ -90,6 +90,16 @@ candidate = sa.Table(
     sa.CheckConstraint("status IN ('waiting', 'done', 'failed')", name="status"),
 )
 
+measurement = sa.Table(
+    "measurement",
+    metadata,
+    sa.Column("name", sa.Text, primary_key=True, comment="of the predicted quantity"),
+    _candidate_key(),
+    _number("value"),
+    sa.Index(None, "candidate_id"),
+    sqlite_with_rowid=False,
+)
+
 record = sa.Table(
     "record",
     metadata,
@@ -198,6 +208,18 @@ band = sa.Table(
     _number("emission_high_nm", optional=True),
     sa.Column("trust", sa.Text, nullable=False),
     sa.Column("cautions", sa.Text),
+)
+
+anchor = sa.Table(
+    "anchor",
+    metadata,
+    # What a measurement has moved stands in ``quantity`` and ``band``; here is what stood there before.
+    sa.Column("name", sa.Text, primary_key=True, comment="of the quantity"),
+    _candidate_key(),
+    *(_number(f"unanchored_{part}") for part in ("value", "low", "high")),
+    sa.Column("caution", sa.Text),
+    sa.Index(None, "candidate_id"),
+    sqlite_with_rowid=False,
 )
 
 score = sa.Table(

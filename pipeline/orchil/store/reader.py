@@ -10,10 +10,21 @@ from typing import Any
 import numpy as np
 import pandas as pd
 import sqlalchemy as sa
-from orchil_schemas import Brief, Column, LibraryTable
+from orchil_schemas import MEASURED, Brief, Column, LibraryTable
 
 from .frames import frame
-from .models import attempt, candidate, candidate_record, quantity, record, screen, want_result, work
+from .models import (
+    anchor,
+    attempt,
+    candidate,
+    candidate_record,
+    measurement,
+    quantity,
+    record,
+    screen,
+    want_result,
+    work,
+)
 from .rows import CandidatePage, CandidateState, ScreenInfo
 
 _STATE = [candidate.c[name] for name in CandidateState.__dataclass_fields__]
@@ -45,6 +56,13 @@ def load_records(connection: sa.Connection, digests: Iterable[str]) -> dict[str,
     return {row.digest: (row.kind, row.payload) for row in rows}
 
 
+def recent_seconds(connection: sa.Connection, stages: Sequence[str], count: int) -> dict[str, list[float]]:
+    """Wall seconds of the last ``count`` successful attempts of each stage, oldest first."""
+    good = sa.select(attempt.c.seconds).where(attempt.c.ok, attempt.c.seconds.is_not(None))
+    newest = good.order_by(attempt.c.id.desc()).limit(count)
+    return {stage: list(connection.scalars(newest.where(attempt.c.stage == stage)))[::-1] for stage in stages}
+
+
 def _by_digest(
     connection: sa.Connection, select: sa.Select[Any], key: sa.Column[str], digests: Iterable[str]
 ) -> Iterator[sa.Row[Any]]:
@@ -54,23 +72,44 @@ def _by_digest(
         yield from connection.execute(query, {"digests": chunk})
 
 
-def library_table(connection: sa.Connection, names: Sequence[str]) -> LibraryTable:
+def measured_names(connection: sa.Connection) -> set[str]:
+    """The quantities of which the user has measured some."""
+    return set(connection.scalars(sa.select(measurement.c.name).distinct()))
+
+
+def library_table(connection: sa.Connection, names: Sequence[str], anchored: bool) -> LibraryTable:
     """The named quantities over all candidates that are done, in the order of the library."""
-    query = sa.select(candidate.c.id, candidate.c.smiles).where(candidate.c.status == "done")
+    medium = sa.func.coalesce(candidate.c.medium_used, candidate.c.medium, "")
+    query = sa.select(candidate.c.id, candidate.c.smiles, candidate.c.name, medium).where(candidate.c.status == "done")
     rows = connection.execute(query.order_by(candidate.c.row_number)).all()
     owners = np.fromiter((row[0] for row in rows), dtype=np.int64, count=len(rows))
-    columns = {name: _column(connection, name, owners) for name in names}
-    return LibraryTable(owners.tolist(), [row[1] or "" for row in rows], columns)
+    columns = {name: _column(connection, _values(name, anchored), owners) for name in names}
+    smiles, labels, media = [row[1] or "" for row in rows], [row[2] for row in rows], [row[3] for row in rows]
+    return LibraryTable(owners.tolist(), smiles, columns, labels, media)
 
 
-def _column(connection: sa.Connection, name: str, owners: np.ndarray[Any, np.dtype[np.int64]]) -> Column:
-    fields = (quantity.c.candidate_id, quantity.c.value, quantity.c.low, quantity.c.high, quantity.c.coverage)
-    cursor = connection.execute(sa.select(*fields).where(quantity.c.name == name)).cursor
+def _values(name: str, anchored: bool) -> sa.Select[Any]:
+    """Candidate, value, low, high and coverage of a predicted or, with a prefix, measured quantity."""
+    if name.startswith(MEASURED):
+        gaps = (sa.null(), sa.null(), sa.null())
+        measured = measurement.c.name == name.removeprefix(MEASURED)
+        return sa.select(measurement.c.candidate_id, measurement.c.value, *gaps).where(measured)
+    parts = [quantity.c[part] for part in ("value", "low", "high")]
+    if anchored:
+        return sa.select(quantity.c.candidate_id, *parts, quantity.c.coverage).where(quantity.c.name == name)
+    same = (anchor.c.name == quantity.c.name) & (anchor.c.candidate_id == quantity.c.candidate_id)
+    before = [sa.func.coalesce(anchor.c[f"unanchored_{part.name}"], part) for part in parts]
+    chosen = sa.select(quantity.c.candidate_id, *before, quantity.c.coverage)
+    return chosen.select_from(quantity.outerjoin(anchor, same)).where(quantity.c.name == name)
+
+
+def _column(connection: sa.Connection, query: sa.Select[Any], owners: np.ndarray[Any, np.dtype[np.int64]]) -> Column:
+    cursor = connection.execute(query).cursor
     assert cursor is not None
     # Rows straight from the driver: for 100,000 candidates SQLAlchemy's row objects take most of the time.
     # None becomes NaN here, and only here: the table of a library stage is numbers.
-    values = np.array(cursor.fetchall(), dtype=np.float64).reshape(-1, len(fields))
-    filled = np.full((len(fields) - 1, len(owners)), np.nan)
+    values = np.array(cursor.fetchall(), dtype=np.float64).reshape(-1, 5)
+    filled = np.full((4, len(owners)), np.nan)
     order = np.argsort(owners)
     place = np.searchsorted(owners, values[:, 0], sorter=order)
     known = place < len(owners)
@@ -86,10 +125,14 @@ def ranking(connection: sa.Connection, limit: int | None) -> pd.DataFrame:
     return frame(list(found.keys()), found.all())
 
 
-def candidate_page(connection: sa.Connection, name_or_id: str) -> CandidatePage | None:
-    """Everything about the candidate of that name, else of that id; of several with one name the first."""
-    named = _states(connection, candidate.c.name == name_or_id)
-    if not named and name_or_id.isdecimal() and len(name_or_id) < 10:
+def candidate_page(connection: sa.Connection, name_or_id: str | int) -> CandidatePage | None:
+    """Everything about the candidate of that name, else of that id; of several with one name the first.
+
+    A number is an id and no name.
+    """
+    key = candidate.c.name if isinstance(name_or_id, str) else candidate.c.id
+    named = _states(connection, key == name_or_id)
+    if not named and isinstance(name_or_id, str) and name_or_id.isdecimal() and len(name_or_id) < 10:
         named = _states(connection, candidate.c.id == int(name_or_id))
     if not named:
         return None

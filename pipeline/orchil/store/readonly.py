@@ -7,11 +7,12 @@ statement is asked what it would do before it runs (sqlite.org/c3ref/set_authori
 from __future__ import annotations
 
 import sqlite3
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Iterable, Mapping, Sequence
 from contextlib import closing
 from typing import Any
 
 import pandas as pd
+from orchil_schemas.panel import SqlFunction
 
 from .engine import connect_read_only
 from .errors import StoreError
@@ -33,8 +34,13 @@ _NAMES = {getattr(sqlite3, name): name for name in ("SQLITE_ATTACH", "SQLITE_DET
 Parameters = Sequence[Any] | Mapping[str, Any]
 
 
-def run_query(location: Location, sql: str, parameters: Parameters = ()) -> pd.DataFrame:
-    """The rows of one SELECT; :class:`StoreError` says what is wrong with the statement."""
+def run_query(
+    location: Location, sql: str, parameters: Parameters = (), functions: Iterable[SqlFunction] = ()
+) -> pd.DataFrame:
+    """The rows of one SELECT; :class:`StoreError` says what is wrong with the statement.
+
+    ``functions`` can be called in it beside those of SQLite.
+    """
     if location.path is None:
         raise StoreError("queries run on store files; on a server use its own client with a role that may only read")
     with closing(connect_read_only(location.path)) as connection:
@@ -44,15 +50,18 @@ def run_query(location: Location, sql: str, parameters: Parameters = ()) -> pd.D
             # At first use SQLite declares the columns of such a table, which the gate would take for a write.
             connection.execute(f"SELECT 1 FROM {function} LIMIT 0")
         gate = _Gate()
+        for lent in functions:
+            connection.create_function(lent.name, lent.arguments, gate.listening(lent.call), deterministic=True)
         connection.set_authorizer(gate)
         return _rows(connection, sql, parameters, gate)
 
 
 class _Gate:
-    """SQLite asks it about every action of a statement; it remembers the first one it refused."""
+    """SQLite asks it about every action of a statement; it remembers the first refusal and the first complaint."""
 
     def __init__(self) -> None:
         self.refused: str | None = None
+        self.complaint: str | None = None
 
     def __call__(self, action: int, first: str | None, second: str | None, *_: str | None) -> int:
         if self._allowed(action, first, second):
@@ -60,6 +69,18 @@ class _Gate:
         name = _NAMES.get(action, "")
         self.refused = self.refused or name.removeprefix("SQLITE_") or second or first or "this statement"
         return sqlite3.SQLITE_DENY
+
+    def listening(self, call: Callable[..., Any]) -> Callable[..., Any]:
+        """The function, with what it complains of remembered: SQLite says only that it raised."""
+
+        def called(*arguments: Any) -> Any:
+            try:
+                return call(*arguments)
+            except Exception as error:
+                self.complaint = self.complaint or str(error)
+                raise
+
+        return called
 
     @staticmethod
     def _allowed(action: int, first: str | None, second: str | None) -> bool:
@@ -84,6 +105,8 @@ def _rows(connection: sqlite3.Connection, sql: str, parameters: Parameters, gate
 def _explain(error: Exception, gate: _Gate) -> str:
     if gate.refused is not None:
         return f"a query can only read, and may not use {gate.refused}: write one SELECT"
+    if gate.complaint is not None:
+        return f"the query cannot run: {gate.complaint}"
     if "one statement" in str(error):
         return "one statement at a time: remove everything after the first semicolon"
     return f"the query cannot run: {error}"

@@ -19,7 +19,10 @@ def now() -> datetime:
 
 @dataclass(frozen=True, slots=True)
 class CandidateRow:
-    """One row of the library file; ``name`` is the user's id, ``extra`` every column Orchil does not know."""
+    """One row of the library file; ``name`` is the user's id, ``extra`` every column Orchil does not know.
+
+    ``measured`` is the user's own value by the name of the predicted quantity; it alone may change later.
+    """
 
     row_number: int
     name: str
@@ -28,11 +31,12 @@ class CandidateRow:
     medium: str | None = None
     charge: int | None = None
     extra: Mapping[str, str] = field(default_factory=dict)
+    measured: Mapping[str, float] = field(default_factory=dict)
 
 
 @dataclass(frozen=True, slots=True)
 class CandidateState:
-    """A candidate and how far it is."""
+    """A candidate and how far it is; ``failed_stage`` is also set where the failure cost no wanted quantity."""
 
     id: int
     row_number: int
@@ -42,6 +46,7 @@ class CandidateState:
     medium: str | None
     charge: int | None
     status: Status
+    failed_stage: str | None = None
 
 
 @dataclass(frozen=True, slots=True)

@@ -11,15 +11,16 @@ from typing import TypeVar
 
 import pandas as pd
 import sqlalchemy as sa
-from orchil_schemas import Brief, LibraryTable, Record, Score, content_digest
+from orchil_schemas import Anchor, Brief, LibraryTable, Record, Score, content_digest
 from orchil_schemas.base import canonical_json
+from orchil_schemas.panel import SqlFunction
 from typing_extensions import Self
 
-from . import reader, writer
+from . import anchors, reader, writer
 from .engine import check_log, read_only_engine, writable_engine
 from .engine import writer as for_writing
 from .errors import StoreError, plain_errors
-from .library import add_candidates
+from .library import add_candidates, update_measured
 from .location import Location, locate, refuse_shared_disk
 from .lock import coordinator_lock
 from .migrate import REVISIONS, revision, upgrade
@@ -120,9 +121,14 @@ class Store:
         return self._read(reader.active_screen)
 
     def add_candidates(self, rows: Sequence[CandidateRow]) -> None:
-        """Add rows of the library; the same rows again change nothing, a changed row is refused."""
+        """Add rows of the library; the same rows again change nothing but what was measured, others are refused."""
         with self._writing() as connection:
             add_candidates(connection, rows)
+
+    def update_measured(self, rows: Sequence[CandidateRow]) -> int:
+        """Take the measured values of rows that are there, unchanged; returns how many rows are not there."""
+        with self._writing() as connection:
+            return update_measured(connection, rows)
 
     def candidates(self) -> list[CandidateState]:
         """Every candidate in the order of the library."""
@@ -146,23 +152,39 @@ class Store:
         """(kind, payload JSON) by digest; unknown records are left out."""
         return self._read(reader.load_records, digests)
 
+    def recent_seconds(self, stages: Sequence[str], count: int) -> dict[str, list[float]]:
+        """Wall seconds of the last ``count`` successful attempts of each stage, oldest first."""
+        return self._read(reader.recent_seconds, stages, count)
+
     def commit(self, batch: Batch) -> None:
         """Write all of the batch or nothing; written twice, only its attempts are there twice."""
         with self._writing() as connection:
             writer.write_batch(connection, batch)
 
-    def library_table(self, names: Sequence[str]) -> LibraryTable:
-        """The named quantities over all candidates that are done."""
-        return self._read(reader.library_table, names)
+    def measured_names(self) -> set[str]:
+        """The quantities of which the user has measured some."""
+        return self._read(reader.measured_names)
 
-    def put_library_records(self, screen_id: int, made: Iterable[tuple[int, Record]]) -> None:
-        """Keep what library stages made: scores replace those of the screen, other records are linked."""
+    def library_table(self, names: Sequence[str], *, anchored: bool = True) -> LibraryTable:
+        """The named quantities over all candidates that are done; not ``anchored``: as they were predicted."""
+        return self._read(reader.library_table, names, anchored)
+
+    def put_library_records(
+        self, screen_id: int, made: Iterable[tuple[int, Record]], kinds: Sequence[type[Record]] = ()
+    ) -> None:
+        """Keep what library stages made: scores replace those of the screen, other records are linked.
+
+        What a stage that makes anchors (``kinds``) moved before goes back first; what it moves now is shown moved.
+        """
         scores: list[tuple[int, Score]] = []
         others: list[tuple[int, Record]] = []
         for owner, found in made:
             scores.append((owner, found)) if isinstance(found, Score) else others.append((owner, found))
         with self._writing() as connection:
+            if Anchor in kinds:
+                anchors.withdraw(connection)
             writer.write_batch(connection, Batch(links=others))
+            anchors.apply(connection, [(owner, one) for owner, one in others if isinstance(one, Anchor)])
             if scores:
                 writer.write_scores(connection, screen_id, scores)
 
@@ -172,13 +194,13 @@ class Store:
         """The view ``ranking``: best first, then the unranked in the order of the library."""
         return self._read(reader.ranking, limit)
 
-    def candidate_page(self, name_or_id: str) -> CandidatePage | None:
-        """Everything about one candidate; None when there is none of that name or id."""
+    def candidate_page(self, name_or_id: str | int) -> CandidatePage | None:
+        """Everything about one candidate; None when there is none of that name or id. A number is an id."""
         return self._read(reader.candidate_page, name_or_id)
 
-    def query(self, sql: str, parameters: Parameters = ()) -> pd.DataFrame:
-        """The rows of one SELECT, which cannot change anything."""
-        return run_query(self.location, sql, parameters)
+    def query(self, sql: str, parameters: Parameters = (), functions: Iterable[SqlFunction] = ()) -> pd.DataFrame:
+        """The rows of one SELECT, which cannot change anything; it may call ``functions``."""
+        return run_query(self.location, sql, parameters, functions)
 
 
 def _check_place(location: Location, *, create: bool) -> None:

@@ -13,9 +13,10 @@ from typing import Any
 import sqlalchemy as sa
 from orchil_schemas import Band, Identity, IntakeNotes, Medium, Record, Score, Transitions
 
-from . import bulk, typed
+from . import anchors, bulk, typed
 from .errors import StoreError
 from .models import (
+    anchor,
     attempt,
     band,
     candidate,
@@ -81,7 +82,7 @@ def forget(connection: sa.Connection, candidates: Sequence[int]) -> None:
     keys = [{"key": owner} for owner in candidates]
     if not keys:
         return
-    for table in (candidate_record, quantity, transition, band):
+    for table in (candidate_record, quantity, transition, band, anchor):
         connection.execute(sa.delete(table).where(table.c.candidate_id == sa.bindparam("key")), keys)
     empty = dict.fromkeys(_KNOWN_LATER)
     change = sa.update(candidate).where(candidate.c.id == sa.bindparam("key")).values(status="waiting", **empty)
@@ -138,6 +139,7 @@ def _finite(value: float | None) -> float | None:
 def _write_quantities(connection: sa.Connection, links: Sequence[Link]) -> None:
     made = [(owner, one) for owner, found in links for one in found.quantities() if math.isfinite(one.value)]
     offered = {(owner, info.name) for owner, found in links for info in found.offers}
+    anchors.outdate(connection, offered)
     gone = offered - {(owner, one.name) for owner, one in made}
     if gone:
         key = (quantity.c.candidate_id == sa.bindparam("owner")) & (quantity.c.name == sa.bindparam("gone"))

@@ -102,17 +102,29 @@ def mirror_image(centre_ev: float, width_ev: float) -> tuple[FloatArray, FloatAr
     return energy, photons / trapezoid(photons, energy)
 
 
+LEARNED_WEIGHT = 0.6
+"""Of the learned rate against that of Strickler and Berg: on unseen scaffolds 0.5 to 1 do about as well, and dyes of
+the strongest emission are drawn less towards the middle."""
+
+
 def _rates(band: Band, energy: FloatArray, photons: FloatArray, refractive_index: float) -> Spread:
-    """Radiative rate (s^-1): from the learned strength of the emission where the band tells one, else from the band."""
+    """Radiative rate (s^-1): two estimates brought together where the band tells a learned strength."""
     from orchil_stages.optics.strength import einstein_a
     from orchil_stages.spectrum.spread import factor_spread
 
+    by_band = rate_from_band(band, energy, photons, refractive_index)
     learned = (band.emission_strength, band.emission_strength_low, band.emission_strength_high)
     if band.emission_max_nm is None or None in learned:
-        return factor_spread(rate_from_band(band, energy, photons, refractive_index), band)
+        return factor_spread(by_band, band)
     emits = HC_EV_NM / band.emission_max_nm
-    value, low, high = (float(einstein_a(emits, strength or 0.0, refractive_index)) for strength in learned)
-    return Spread(value=value, low=low, high=high, coverage=band.coverage)
+    middle, low, high = (float(einstein_a(emits, strength or 0.0, refractive_index)) for strength in learned)
+    value = float(together(middle, by_band))
+    return Spread(value=value, low=value * low / middle, high=value * high / middle, coverage=band.coverage)
+
+
+def together(learned: FloatArray | float, by_band: FloatArray | float) -> FloatArray:
+    """Weighted geometric mean of two estimates of a rate."""
+    return np.asarray(learned) ** LEARNED_WEIGHT * np.asarray(by_band) ** (1.0 - LEARNED_WEIGHT)
 
 
 def _in_step(value: float, rates: Spread) -> Spread:

@@ -11,7 +11,9 @@ import numpy as np
 from numpy.typing import NDArray
 from orchil_schemas import HC_EV_NM, FloatArray
 
-from orchil_stages.optics.strength import einstein_a
+from orchil_stages.emission.stage import together
+from orchil_stages.optics.strength import einstein_a, gaussian_area, strength_from_area
+from orchil_stages.optics.units import ev_to_cm1
 
 from . import fingerprints
 from .families import family
@@ -142,10 +144,15 @@ class Table:
         emits = (self.physics - self.unseen.values["stokes"])[known]
         measured = einstein_a(at_measured, 10.0 ** wanted[known])
         learned = einstein_a(emits, 10.0 ** self.unseen.values["emission_strength"][known])
+        height, width = (10.0 ** self.unseen.values[name][known] for name in ("absorptivity", "width"))
+        in_band = strength_from_area(gaussian_area(height, ev_to_cm1(width)))
+        by_band = einstein_a(emits, in_band) * emits / self.final[known]
         computed = einstein_a(emits, np.array([s.strength for s in self._held])[known])
+        both = together(learned, by_band)
         return (
-            f"radiative rate: median factor {_factor(learned / measured):.2f} on {len(measured)} rows with a quantum "
-            f"yield above {LEAST_YIELD}; {_factor(computed / measured):.2f} from the computed strength"
+            f"radiative rate: median factor {_factor(both / measured):.2f} on {len(measured)} rows "
+            f"with a quantum yield above {LEAST_YIELD}; learned alone {_factor(learned / measured):.2f}, from the band "
+            f"alone {_factor(by_band / measured):.2f}, from the computed strength {_factor(computed / measured):.2f}"
         )
 
     def _shifts(self) -> str:

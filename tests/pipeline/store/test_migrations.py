@@ -2,15 +2,19 @@
 
 from __future__ import annotations
 
+import json
 import sqlite3
 
 import pytest
 import sqlalchemy as sa
+from alembic import command
 from alembic.autogenerate import compare_metadata
 from alembic.config import Config
 from alembic.migration import MigrationContext
 from alembic.script import ScriptDirectory
 from orchil.store import Store, StoreError, migrate
+from orchil.store.engine import writable_engine, writer
+from orchil.store.location import locate
 from orchil.store.models import metadata
 from sqlalchemy.dialects import postgresql
 from sqlalchemy.schema import CreateTable
@@ -50,6 +54,44 @@ def test_migrating_a_filled_store_again_changes_nothing(filled, path):
     migrate.upgrade(filled.location)
     with Store.open(path, create=False) as again:
         assert again.ranking().equals(before)
+
+
+EXTRA = {"batch": "A", "Measured Absorption max nm": "532,5 nm", "measured_emission_max_nm": "n/a"}
+FILLED = f"""
+INSERT INTO screen VALUES (1, '2025-01-01 00:00:00', '2025-01-01 00:00:00', 'a.csv', '{{}}', 'd', '{{}}');
+INSERT INTO candidate (id, row_number, name, structure, format, extra, status, cautions)
+    VALUES (7, 1, 'old', 'CC', 'smiles', '{json.dumps(EXTRA)}', 'done', 'look out');
+INSERT INTO candidate (id, row_number, name, structure, format, extra, status)
+    VALUES (8, 2, 'plain', 'CCC', 'smiles', '{{"batch": "B"}}', 'waiting');
+INSERT INTO quantity VALUES ('absorption_max_nm', 7, 500, 450, 560, 0.9, 'nm');
+INSERT INTO band VALUES (7, 1, 1, 1, 0.9, 500, 450, 560, 490, 500, 9e4, 5e4, 2e5, 0.3, 1, 9, 4, 1, NULL, NULL, NULL,
+    'edge', 'rough');
+INSERT INTO score VALUES (1, 7, 1, 0.8, 0.7, 1, 1);
+"""
+
+
+def test_a_store_of_the_first_revision_opens_with_all_it_holds(path):
+    location = locate(path)
+    config = Config()
+    config.set_main_option("script_location", str(migrate._FOLDER))
+    with writer(writable_engine(location, foreign_keys=False)).begin() as connection:
+        config.attributes["connection"] = connection
+        command.upgrade(config, "0001")
+        migrate._finish_file(connection, location)
+    with sqlite3.connect(path) as raw:
+        raw.executescript(FILLED)
+    raw.close()
+    with pytest.raises(StoreError, match="older Orchil"):
+        Store.open_read_only(path)
+    with Store.open(path, create=False) as store:
+        old, _ = store.query("SELECT * FROM ranking").to_dict("records")
+        assert (old["candidate"], old["rank"], old["absorption_max_nm"]) == ("old", 1, 500)
+        assert old["cautions"] == "look out; rough"
+        assert old["measured_absorption_max_nm"] == 532.5
+        assert store.measured_names() == {"absorption_max_nm"}
+        assert store.candidate_page("old").extra == {"batch": "A"}
+        assert store.candidate_page("plain").extra == {"batch": "B"}
+        assert store.library_table(["absorption_max_nm"]).column("absorption_max_nm").high.tolist() == [560]
 
 
 def test_a_migration_that_fails_leaves_nothing(path, monkeypatch):

@@ -10,7 +10,7 @@ import numpy as np
 import pytest
 from orchil.store import AttemptRow, Batch, CandidateOutcome, CandidateRow, Store, StoreError
 from orchil.store import store as store_module
-from orchil_schemas import IntakeNotes, Quantity, QuantityInfo, Record
+from orchil_schemas import Anchor, AnchoredQuantity, IntakeNotes, Quantity, QuantityInfo, Record
 
 from .conftest import (
     finished,
@@ -240,6 +240,10 @@ RANKING = [
     "cautions",
     "duplicate_of",
     "row_number",
+    "measured_absorption_max_nm",
+    "measured_emission_max_nm",
+    "unanchored_absorption_max_nm",
+    "unanchored_emission_max_nm",
 ]
 
 
@@ -283,6 +287,55 @@ def test_scores_replace_the_earlier_ones_of_their_screen(filled):
     assert filled.ranking()["rank"].tolist()[0] == 1
     assert filled.candidate_page("dye-3").records["cluster"] == {"number": 4}
     assert filled.library_table(["cluster"]).column("cluster").value[1] == 4
+
+
+def make_anchor(before=520.0, after=540.0):
+    change = AnchoredQuantity(
+        quantity="absorption_max_nm",
+        coverage=0.9,
+        before_nm=before,
+        before_low_nm=before - 30,
+        before_high_nm=before + 30,
+        after_nm=after,
+        after_low_nm=after - 10,
+        after_high_nm=after + 15,
+        shift_ev=-0.1,
+        error_ratio=0.4,
+        anchors=(),
+        caution="look at it",
+    )
+    return Anchor(changes=(change,))
+
+
+def test_anchored_numbers_stand_in_and_go_back(filled):
+    screen, names = filled.active_screen().id, ["absorption_max_nm"]
+    filled.put_library_records(screen, [(1, make_anchor())], (Anchor,))
+    first = filled.ranking().iloc[0]
+    assert first[["absorption_max_nm", "absorption_low_nm", "absorption_high_nm"]].tolist() == [540, 530, 555]
+    assert (first["unanchored_absorption_max_nm"], first["rank"]) == (520, 1)
+    assert first["cautions"] == "energetic group; edge of the model; look at it"
+    column = filled.library_table(names).column(names[0])
+    assert (column.value[0], column.high[0]) == (540, 555)
+    before = filled.library_table(names, anchored=False).column(names[0])
+    assert (before.value[0], before.low[0], before.high[0], before.coverage[0]) == (520, 490, 550, 0.9)
+    assert filled.candidate_page("dye-1").records["band"]["absorption_max_nm"] == 520
+    filled.put_library_records(screen, [], (Anchor,))
+    assert filled.ranking().iloc[0]["absorption_high_nm"] == 550
+    assert "anchor" not in filled.candidate_page("dye-1").records
+
+
+def test_a_band_that_is_predicted_anew_is_not_put_back(filled):
+    screen = filled.active_screen().id
+    filled.put_library_records(screen, [(1, make_anchor())], (Anchor,))
+    filled.commit(finished(1, make_band(600.0)))
+    assert "anchor" not in filled.candidate_page("dye-1").records
+    filled.put_library_records(screen, [], (Anchor,))
+    first = filled.ranking().iloc[0]
+    assert first["absorption_max_nm"] == 600
+    assert first["unanchored_absorption_max_nm"] is None
+    filled.put_library_records(screen, [(1, make_anchor(600.0, 590.0))], (Anchor,))
+    filled.forget_results([1])
+    assert filled.query("SELECT count(*) AS n FROM anchor")["n"].tolist() == [0]
 
 
 def test_a_candidate_that_failed_later_shows_no_rank(filled):
