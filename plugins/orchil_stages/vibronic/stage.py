@@ -33,7 +33,7 @@ class VibronicSettings(Frozen):
     from_cm1: float = Field(default=150.0, ge=0, description="modes below are left out: floppy, not harmonic")
     to_cm1: float = Field(default=1900.0, gt=0, description="modes above are left out: C-H stretches hardly move")
     line_width_cm1: float = Field(default=700.0, ge=20, le=5000, description="full width of one line in the medium")
-    temperature_kelvin: float = Field(default=298.15, ge=0, le=1000)
+    temperature_kelvin: float = Field(default=298.15, ge=0, le=1000, description="of the hot bands")
     largest: int = Field(default=80, ge=2, description="atoms; larger molecules are refused for their cost")
 
 
