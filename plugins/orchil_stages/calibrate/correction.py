@@ -109,7 +109,8 @@ class Correction:
     def see(self, features: FloatArray, weights: Sequence[Weights]) -> Seen:
         """Bands with what all targets need of them, computed once."""
         bands = self.view.bands(features, weights)
-        return Seen(bands, covariance(bands, self.points), likeness(bands, self.points))
+        shared = overlaps(bands, self.points)
+        return Seen(bands, covariance(bands, self.points, shared), likeness(bands, shared))
 
     def value(self, target: str, seen: Seen) -> FloatArray:
         """What has to be added to the computed value, (n,)."""
@@ -136,9 +137,9 @@ class Seen:
     likeness: FloatArray
 
 
-def likeness(bands: Bands, points: Bands) -> FloatArray:
-    """Overlap of environments with the nearest pseudo-input, times the known share, 0 to 1, (n,)."""
-    found: FloatArray = bands.known * overlaps(bands, points).max(axis=1)
+def likeness(bands: Bands, shared: FloatArray) -> FloatArray:
+    """Largest overlap of environments (n, points) with a pseudo-input, times the known share, 0 to 1, (n,)."""
+    found: FloatArray = bands.known * shared.max(axis=1)
     return found
 
 

@@ -42,17 +42,18 @@ class Bands:
         return Bands(self.environments[rows], self.features[rows], self.known[rows])
 
 
-def covariance(one: Bands, other: Bands) -> FloatArray:
-    """K between all pairs, (len(one), len(other))."""
+def covariance(one: Bands, other: Bands, shared: FloatArray | None = None) -> FloatArray:
+    """Covariance of all pairs, (len(one), len(other)); ``shared`` spares the overlaps where they are known."""
     by_features = _squared_distances(one.features, other.features) / (FEATURE_LENGTH**2 * one.features.shape[1])
-    by_environment = 2.0 * (1.0 - overlaps(one, other)) / ENVIRONMENT_LENGTH**2
+    by_environment = 2.0 * (1.0 - (overlaps(one, other) if shared is None else shared)) / ENVIRONMENT_LENGTH**2
     k: FloatArray = np.exp(-0.5 * (by_features + by_environment))
     return k
 
 
 def overlaps(one: Bands, other: Bands) -> FloatArray:
-    """U . u' for all pairs, (len(one), len(other)); 1 for equal distributions of hole and electron."""
-    found: FloatArray = np.clip((one.environments @ other.environments.T).toarray(), 0.0, 1.0)
+    """Scalar products u . u' of all pairs, (len(one), len(other)); 1 for equal distributions of hole and electron."""
+    # in this order the transposed factor, which has to be turned row by row, is the small one in a screen
+    found: FloatArray = np.clip((other.environments @ one.environments.T).toarray().T, 0.0, 1.0)
     return found
 
 

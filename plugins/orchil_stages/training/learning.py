@@ -20,7 +20,7 @@ from orchil_stages.calibrate.correction import (
     size_features,
 )
 from orchil_stages.calibrate.coverages import COVERAGES
-from orchil_stages.calibrate.kernel import Bands, covariance
+from orchil_stages.calibrate.kernel import Bands, covariance, overlaps
 from orchil_stages.medium import lookup
 from orchil_stages.optics.strength import einstein_a, radiative_rate
 
@@ -142,7 +142,7 @@ def cross_validate(by_fold: Sequence[Sequence[Sample]]) -> Unseen:
         bands = learned.view.bands(np.array([s.features for s in test]), [s.weights for s in test])
         for name, found in learned.values(bands).items():
             values[name][out] = found
-        near[out] = likeness(bands, learned.points)
+        near[out] = likeness(bands, overlaps(bands, learned.points))
         sized[out] = size_features(bands, near[out])
     return Unseen(values, near, sized, folds)
 
