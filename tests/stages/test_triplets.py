@@ -15,6 +15,7 @@ from orchil_stages.electron.triplets import (
 )
 from orchil_stages.excite.model import Opened, open_states, solve_states
 from orchil_stages.excite.parameters import start_parameters, trained_parameters
+from orchil_stages.excite.report import transitions_record
 from orchil_stages.excite.response import Prepared, hamiltonian, prepare
 
 GAS = Medium(name="gas phase", dielectric_constant=1.0, refractive_index=1.0)
@@ -81,7 +82,8 @@ def test_medium_terms_do_not_reach_triplets_through_a_transition_dipole(opened: 
 
 def test_record_and_quantities(opened: Opened, prepared: Prepared) -> None:
     states, _ = solve_states(prepared, trained_parameters(), GAS, opened.wave.dipole, 4)
-    made = triplets_record(states, prepared, trained_parameters(), GAS, opened.wave.dipole)
+    singlets = transitions_record(states, opened.window)
+    made = triplets_record(singlets, prepared, trained_parameters(), GAS, opened.wave.dipole)
     by_name = {quantity.name: quantity for quantity in made.quantities()}
     assert by_name.keys() == {info.name for info in made.offers}
     assert made.triplet_low_ev < by_name["triplet_ev"].value < made.triplet_high_ev

@@ -11,10 +11,10 @@ from pathlib import Path
 from typing import Any
 
 import numpy as np
-from scipy.sparse import csr_array, diags_array
+from scipy.sparse import csr_array
 
 from .correction import Correction, ErrorSize, Head, View
-from .kernel import Bands
+from .kernel import Bands, unit_rows
 
 FOLDER = "trained"
 _ARRAYS, _NUMBERS = "points.npz", "numbers.json"
@@ -72,7 +72,7 @@ def rounded(points: Bands) -> Bands:
     environments = points.environments.copy()
     environments.data = np.round(environments.data * _STEPS) / _STEPS
     features = points.features.astype(np.float16).astype(np.float64)
-    return Bands(_unit(environments), features, np.ones(len(features)))
+    return Bands(unit_rows(environments), features, np.ones(len(features)))
 
 
 def _points(kept: Mapping[str, Any], codes: int) -> Bands:
@@ -80,12 +80,7 @@ def _points(kept: Mapping[str, Any], codes: int) -> Bands:
     data = kept["data"].astype(np.float64) / _STEPS
     parts = (data, kept["indices"].astype(np.int32), kept["indptr"].astype(np.int32))
     environments = csr_array(parts, shape=(len(features), 2 * codes))
-    return Bands(_unit(environments), features, np.ones(len(features)))
-
-
-def _unit(environments: csr_array) -> csr_array:
-    lengths = np.sqrt(np.asarray(environments.multiply(environments).sum(axis=1))).ravel()
-    return csr_array(diags_array(1.0 / np.maximum(lengths, 1e-9)) @ environments)
+    return Bands(unit_rows(environments), features, np.ones(len(features)))
 
 
 def _head(found: Mapping[str, Any], weights: Any) -> Head:

@@ -14,7 +14,7 @@ from typing import Any
 
 import numpy as np
 from orchil_schemas import FloatArray
-from scipy.sparse import csr_array
+from scipy.sparse import csr_array, diags_array
 
 ENVIRONMENT_LENGTH = 0.7
 """a. Cross-validation over scaffolds is flat around it: 0.55 to 0.9 changes the error by less than 1 %."""
@@ -55,6 +55,12 @@ def overlaps(one: Bands, other: Bands) -> FloatArray:
     # in this order the transposed factor, which has to be turned row by row, is the small one in a screen
     found: FloatArray = np.clip((other.environments @ one.environments.T).toarray().T, 0.0, 1.0)
     return found
+
+
+def unit_rows(environments: csr_array) -> csr_array:
+    """The rows brought to length 1."""
+    lengths = np.sqrt(np.asarray(environments.multiply(environments).sum(axis=1))).ravel()
+    return csr_array(diags_array(1.0 / np.maximum(lengths, 1e-9)) @ environments)
 
 
 def _squared_distances(one: FloatArray, other: FloatArray) -> FloatArray:

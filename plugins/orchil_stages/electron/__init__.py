@@ -1,6 +1,6 @@
 """What an excitation is: where hole and electron sit, fragments, triplets, orbitals to look at."""
 
 from .orbitals import write_cube, write_molden
-from .report import state_records
+from .report import state_analysis, triplets_record
 
-__all__ = ["state_records", "write_cube", "write_molden"]
+__all__ = ["state_analysis", "triplets_record", "write_cube", "write_molden"]

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import numpy as np
-from orchil_schemas import FloatArray, Medium
+from orchil_schemas import FloatArray, Medium, Transitions
 from orchil_schemas.states import StateAnalysis, Triplets
 
 from orchil_stages.darkness.operations import TOLERANCE_ANGSTROM
@@ -23,16 +23,6 @@ from .triplets import triplet_numbers, triplet_states
 TRIPLET_METHOD = "singlet Hamiltonian without exchange repulsion, one-centre terms and constant fitted to triplets"
 _DIGITS = 4
 _COVERAGE = 0.9
-
-
-def state_records(
-    states: States, prepared: Prepared, parameters: Parameters, medium: Medium, ground_dipole: FloatArray
-) -> tuple[StateAnalysis, Triplets]:
-    """Both records for the singlets of a window; costs a few milliseconds."""
-    return (
-        state_analysis(states, prepared.window),
-        triplets_record(states, prepared, parameters, medium, ground_dipole),
-    )
 
 
 def state_analysis(states: States, window: Window) -> StateAnalysis:
@@ -76,15 +66,14 @@ def state_analysis(states: States, window: Window) -> StateAnalysis:
 
 
 def triplets_record(
-    states: States, prepared: Prepared, parameters: Parameters, medium: Medium, ground_dipole: FloatArray
+    singlets: Transitions, prepared: Prepared, parameters: Parameters, medium: Medium, ground_dipole: FloatArray
 ) -> Triplets:
     """Lowest triplets, beside the singlets of the same window."""
     numbers = triplet_numbers()
     found = triplet_states(prepared, parameters, numbers, medium, ground_dipole)
     shares = pi_share(found, prepared.window)
     measured = float(numbers.measured(found.energies, shares)[0])
-    first_pi = float(pi_share(states, prepared.window)[0])
-    gap = numbers.gap(float(states.energies[0]), float(found.energies[0]), first_pi)
+    gap = numbers.gap(float(singlets.energy_ev[0]), float(found.energies[0]), float(singlets.pi_share[0]))
     return Triplets(
         method=TRIPLET_METHOD,
         energy_ev=found.energies,

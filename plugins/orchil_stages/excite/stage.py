@@ -53,8 +53,8 @@ class Excite:
         return availability(engines[0], "pyscf", "scipy")
 
     def run(self, inputs: Inputs, settings: ExciteSettings, context: Context) -> Iterable[Record]:
-        """Orbitals and Transitions; NotConverged or BadResult with the reason."""
-        from orchil_stages.electron import state_records
+        """Orbitals, singlets, their analysis and triplets; NotConverged or BadResult with the reason."""
+        from orchil_stages.electron import state_analysis, triplets_record
 
         from .model import open_states, solve_states
         from .parameters import trained_parameters
@@ -70,8 +70,10 @@ class Excite:
             raise BadResult(
                 f"the first excited state lies at {states.energies[0]:.2f} eV: no sound closed-shell ground state"
             )
-        more = state_records(states, prepared, parameters, medium, dipole)
-        return orbitals_record(opened), transitions_record(states, opened.window), *more
+        singlets = transitions_record(states, opened.window)
+        analysis = state_analysis(states, opened.window)
+        triplets = triplets_record(singlets, prepared, parameters, medium, dipole)
+        return orbitals_record(opened), singlets, analysis, triplets
 
 
 _LOWEST_EV = 0.2

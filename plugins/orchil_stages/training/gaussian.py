@@ -9,10 +9,10 @@ from __future__ import annotations
 import numpy as np
 import scipy.linalg
 from orchil_schemas import FloatArray, IntArray
-from scipy.sparse import csr_array, diags_array
+from scipy.sparse import csr_array
 
 from orchil_stages.calibrate.files import rounded
-from orchil_stages.calibrate.kernel import ENVIRONMENT_LENGTH, FEATURE_LENGTH, Bands, covariance
+from orchil_stages.calibrate.kernel import ENVIRONMENT_LENGTH, FEATURE_LENGTH, Bands, unit_rows
 
 _CLIP = 1.5
 """Residuals beyond so many median residuals lose weight: wrong rows and wrong bands must not steer."""
@@ -46,9 +46,7 @@ def pseudo_inputs(bands: Bands, count: int, seed: int) -> Bands:
     number = int(groups.max()) + 1
     sizes = np.bincount(groups, minlength=number)
     gather = csr_array((1.0 / sizes[groups], (groups, np.arange(len(groups)))), shape=(number, len(groups)))
-    environments = csr_array(gather @ bands.environments)
-    lengths = np.sqrt(np.asarray(environments.multiply(environments).sum(axis=1))).ravel()
-    environments = csr_array(diags_array(1.0 / np.maximum(lengths, 1e-9)) @ environments)
+    environments = unit_rows(csr_array(gather @ bands.environments))
     environments.data[environments.data < _SMALLEST_SHARE] = 0.0
     environments.eliminate_zeros()
     return rounded(Bands(environments, np.asarray(gather @ bands.features), np.ones(number)))
@@ -74,8 +72,3 @@ def _sketch(environments: csr_array, seed: int) -> FloatArray:
     if environments.shape[1] <= _SKETCH:
         return np.asarray(environments.toarray())
     return np.asarray(TruncatedSVD(_SKETCH, random_state=seed).fit_transform(environments))
-
-
-def prior_covariance(points: Bands) -> FloatArray:
-    """Covariance between the pseudo-inputs."""
-    return covariance(points, points)

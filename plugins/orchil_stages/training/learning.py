@@ -25,7 +25,7 @@ from orchil_stages.medium import lookup
 from orchil_stages.optics.strength import einstein_a, radiative_rate
 
 from .dataset import Measurement, fold
-from .gaussian import prior_covariance, pseudo_inputs, robust_weights
+from .gaussian import pseudo_inputs, robust_weights
 from .hamiltonian import FOLDS
 from .samples import Sample
 
@@ -110,7 +110,7 @@ def learn(samples: Sequence[Sample]) -> Learned:
     view = make_view(samples)
     bands = view.bands(np.array([s.features for s in samples]), [s.weights for s in samples])
     points = pseudo_inputs(bands, POINTS, seed=1)
-    prior, cross = prior_covariance(points), covariance(bands, points)
+    prior, cross = covariance(points, points), covariance(bands, points)
     solutions = {}
     for name, values in targets(samples).items():
         known = np.isfinite(values)
